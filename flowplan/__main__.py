@@ -1,0 +1,5 @@
+"""Run flowplan with ``python -m flowplan``."""
+
+from flowplan.cli.main import run
+
+run()

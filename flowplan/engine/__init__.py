@@ -1,0 +1,1 @@
+"""Pure arithmetic on arrays and graphs: placement, overlay, margin."""

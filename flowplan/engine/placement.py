@@ -1,0 +1,222 @@
+"""Where every layer lies: the one mechanism from which overlays follow.
+
+=======  ===========================  =========================================================
+symbol   name                         meaning
+=======  ===========================  =========================================================
+F        printed frame                where a mask was printed, over its references r:
+                                      F_i = sum_r w_r (F_r + M_r + A_ir) + L_i
+D        device pattern               D_i = F_i + P_i
+M        marks                        what moves the marks as later masks read them
+A        alignment                    reading r's marks from mask i, fresh for each (i, r, axis)
+L, P     own terms                    of the mask and its tool, entering layer and pattern
+E        edge errors                  outward positive; half of the CD, or the edge itself
+=======  ===========================  =========================================================
+
+A self-aligned feature takes over F, P and M of what it follows, so its D is its parent's exactly.
+"""
+
+import math
+from collections import defaultdict
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from flowplan.engine.sources import (
+    FloatArray,
+    ModeTable,
+    Source,
+    SourceBook,
+    action,
+)
+from flowplan.model.base import AXES, WAFER, Axis
+from flowplan.model.flow import Flow
+from flowplan.model.masks import Mask, Reading, SelfAligned
+from flowplan.model.terms import SHAPE_PER_AXIS, Kind, Shape, SizeParts, Term, quoted
+
+Amounts = list[tuple[int, float]]
+PartName = str
+#: Differences this small against their terms are dust of averaged weights, not errors.
+_DUST = 1e-12
+
+
+@dataclass(frozen=True, slots=True)
+class Placement:
+    """Every layer's pattern and edges as amounts over modes.
+
+    Attributes
+    ----------
+    index : dict of str to int
+        Row of each layer; the wafer has a row of zeros.
+    sources : tuple of Source
+        Every independent scalar.
+    modes : dict of axis to ModeTable
+        What each column means.
+    pattern, edge : dict of axis to ndarray, shape (n_layers + 1, n_modes)
+        D and E [nm, or nm per mm of position] at the quoted sizes.
+    """
+
+    index: dict[str, int]
+    sources: tuple[Source, ...]
+    modes: dict[Axis, ModeTable]
+    pattern: dict[Axis, FloatArray]
+    edge: dict[Axis, FloatArray]
+
+    def overlay(self, axis: Axis, first: list[int], second: list[int]) -> FloatArray:
+        """Return D_second - D_first, shape (n_pairs, n_modes), with cancelled modes exactly 0.
+
+        Parameters
+        ----------
+        axis : {'x', 'y'}
+            Axis of the overlay.
+        first, second : list of int
+            Rows of the layers, see `index`.
+        """
+        a, b = self.pattern[axis][first], self.pattern[axis][second]
+        difference = b - a
+        difference[np.abs(difference) <= _DUST * (np.abs(a) + np.abs(b))] = 0.0
+        return difference
+
+
+def place(flow: Flow) -> Placement:
+    """Place every layer of a flow.
+
+    Parameters
+    ----------
+    flow : Flow
+        A checked flow.
+
+    Returns
+    -------
+    Placement
+        Amounts of every source in every layer.
+    """
+    walk = _Walk(flow, SourceBook())
+    for layer in flow.layers.values():
+        walk.collect_edge(layer)
+        if isinstance(layer, Mask):
+            walk.collect_mask(layer)
+    return _assemble(flow, walk)
+
+
+class _Walk:
+    """Collects what enters each part of each mask, in (mode, amount) lists."""
+
+    def __init__(self, flow: Flow, book: SourceBook) -> None:
+        self.flow = flow
+        self.book = book
+        self.parts: dict[tuple[str, PartName, Axis], Amounts] = defaultdict(list)
+
+    def collect_mask(self, mask: Mask) -> None:
+        for tool, name, term in self.flow.terms_of(mask):
+            for axis, mode, amount in self._term(mask, tool, name, term):
+                self.parts[mask.id, term.enters, axis].append((mode, amount))
+        for axis in AXES:
+            for reading, weight in mask.aligns_to.weighted(axis):
+                for label, size in self._read(mask, reading):
+                    amounts = self._shift(label, mask.id, size, axis, weight * _side(mask, "shift", axis))
+                    self.parts[mask.id, "read", axis] += amounts
+
+    def collect_edge(self, layer: Mask | SelfAligned) -> None:
+        cd = layer.cd if isinstance(layer, Mask) else None
+        for label, size, share in (("CD", cd, 0.5), ("edge", layer.edge, 1.0)):
+            if size is None:
+                continue
+            for axis in AXES:
+                self.parts[layer.id, "edge", axis] += self._shift(label, layer.id, size, axis, share)
+
+    def _read(self, mask: Mask, reading: Reading) -> Iterator[tuple[str, SizeParts]]:
+        tool = self.flow.tools[mask.tool]
+        to_wafer = reading.mask == WAFER
+        size = reading.alignment or (tool.wafer_alignment if to_wafer else tool.alignment)
+        if size is not None:
+            yield f"alignment to {reading.mask}", size
+        marks = self.flow.layers.get(reading.mask)
+        if isinstance(marks, Mask) and marks.mark_reading is not None:
+            yield f"mark reading of {marks.id}", marks.mark_reading
+
+    def _shift(self, label: str, of: str, size: SizeParts, axis: Axis, factor: float) -> Amounts:
+        """Amounts of an error of one layer on one axis that nothing else shares."""
+        found: Amounts = []
+        for kind, per_axis in size.parts():
+            value = per_axis.on(axis).in_base(self.flow.unit)
+            if value:
+                source = Source(label, of, kind, "shift", value)
+                index = self.book.source((of, label, kind, axis), source)
+                found.append((self.book.mode(axis, index, 0), factor * value))
+        return found
+
+    def _term(self, mask: Mask, tool: str | None, name: str, term: Term) -> Iterator[tuple[Axis, int, float]]:
+        for kind, per_axis in term.parts():
+            for axis in AXES:
+                act = action(term.shape, term.over, axis)
+                value = per_axis.on(axis).in_base(self.flow.unit)
+                if act is None or not value:
+                    continue
+                basis, sign = act
+                scalar = axis if term.shape in SHAPE_PER_AXIS else None
+                size = quoted(per_axis, scalar).in_base(self.flow.unit)
+                for key, label, of, share in _shares(mask, tool, name, term, kind):
+                    source = Source(label, of, kind, term.shape, size)
+                    index = self.book.source((*key, kind, scalar), source)
+                    amount = sign * _side(mask, term.shape, axis) * share * value
+                    yield axis, self.book.mode(axis, index, basis), amount
+
+
+def _shares(
+    mask: Mask, tool: str | None, name: str, term: Term, kind: Kind
+) -> Iterator[tuple[tuple[str, ...], str, str, float]]:
+    """Split a term into what is common and what is the mask's own: (key, name, of, share)."""
+    own: tuple[str, ...] = ("own", mask.id, tool or "", name)
+    shared: tuple[str, ...]
+    if term.source is not None:
+        shared, label, of = ("source", term.source), term.source, "shared source"
+    else:
+        shared, label, of = ("tool", tool or mask.id, name), name, tool or mask.id
+    if kind == "offset":
+        # Known and signed, so never split; a tool's moves each of its masks alike.
+        yield (*(shared if tool else own), "offset"), label if tool else name, of if tool else mask.id, 1.0
+        return
+    common = term.common_share
+    part, rest = (common, 1 - common) if kind == "bound" else (math.sqrt(common), math.sqrt(1 - common))
+    if part:
+        yield shared, label, of, part
+    if rest:
+        yield own, name, mask.id, rest
+
+
+def _side(mask: Mask, shape: Shape, axis: Axis) -> int:
+    """Sign of a shape seen from the front: on the back x is reversed (SEMI M20)."""
+    mirrored = shape in ("rotation", "skew") or (shape == "shift" and axis == "x")
+    return -1 if mask.side == "back" and mirrored else 1
+
+
+def _assemble(flow: Flow, walk: _Walk) -> Placement:
+    tables, places = walk.book.tables()
+    index = {WAFER: 0} | {name: i + 1 for i, name in enumerate(flow.layers)}
+    patterns, edges = {}, {}
+    for axis in AXES:
+        shape = (len(index), tables[axis].size)
+        frame, device, marks, edge = (np.zeros(shape) for _ in range(4))
+
+        def add(row: FloatArray, layer: str, part: PartName, axis: Axis = axis) -> None:
+            for mode, amount in walk.parts.get((layer, part, axis), ()):
+                row[places[axis][mode]] += amount
+
+        for name, layer in flow.layers.items():
+            i = index[name]
+            add(edge[i], name, "edge")
+            if isinstance(layer, SelfAligned):
+                parent = index[layer.follows.on(axis)]
+                frame[i], device[i], marks[i] = frame[parent], device[parent], marks[parent]
+                edge[i] += layer.tone.sign(axis) * edge[parent]
+                continue
+            for reading, weight in layer.aligns_to.weighted(axis):
+                frame[i] += weight * marks[index[reading.mask]]
+            add(frame[i], name, "read")
+            add(frame[i], name, "layer")
+            device[i] = marks[i] = frame[i]
+            add(device[i], name, "pattern")
+            add(marks[i], name, "marks")
+        patterns[axis], edges[axis] = device, edge
+    return Placement(index, tuple(walk.book.sources), tables, patterns, edges)

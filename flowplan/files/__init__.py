@@ -1,0 +1,1 @@
+"""Reading and writing: YAML with positions, atomic output."""

@@ -1,0 +1,144 @@
+"""Reading a flow file: bytes, text, plain data, model, checks; each finding with its place."""
+
+import os
+from dataclasses import dataclass
+from pathlib import Path as FilePath
+
+from flowplan.errors import Diagnostic, FlowError, Span
+from flowplan.files.yamltext import Places, read_yaml
+from flowplan.model.build import build
+from flowplan.model.check import check
+from flowplan.model.flow import Flow
+from flowplan.model.salvage import salvage
+
+#: A flow of several hundred masks stays well below this [bytes].
+MOST_BYTES = 4_000_000
+
+_AT_KEY = frozenset({"FP201", "FP309", "FP105"})
+
+
+@dataclass(frozen=True, slots=True)
+class Loaded:
+    """A sound flow with the warnings found in it."""
+
+    flow: Flow
+    warnings: tuple[Diagnostic, ...]
+
+
+def load(file: str | os.PathLike[str]) -> Flow:
+    """Read a flow file.
+
+    Parameters
+    ----------
+    file : path-like
+        A YAML file.
+
+    Returns
+    -------
+    Flow
+        The flow, checked.
+
+    Raises
+    ------
+    FlowError
+        When anything is wrong with the file; holds every finding with line and column.
+    """
+    return load_with_warnings(file).flow
+
+
+def load_with_warnings(file: str | os.PathLike[str]) -> Loaded:
+    """Read a flow file and keep the warnings; see `load`."""
+    name = os.fspath(file)
+    return parse(_read_text(FilePath(file), name), name)
+
+
+def parse(text: str, name: str = "<text>") -> Loaded:
+    """Read a flow from text.
+
+    Parameters
+    ----------
+    text : str
+        YAML text.
+    name : str
+        What diagnostics call the file.
+
+    Returns
+    -------
+    Loaded
+        The flow and its warnings.
+
+    Raises
+    ------
+    FlowError
+        With every finding, warnings included.
+    """
+    data, places = read_yaml(text, name)
+    if not isinstance(data, dict):
+        what = "the file is empty" if data is None else "a flow file is a mapping (key: value)"
+        hint = "`flowplan new` writes a starter flow"
+        raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1))])
+    flow, findings = build(data)
+    if flow is not None:
+        findings = check(flow)
+    else:
+        findings = (*findings, *_findings_in_remainder(data, findings))
+    placed = _place(findings, places)
+    if flow is None or any(d.severity == "error" for d in placed):
+        raise FlowError(placed)
+    return Loaded(flow, placed)
+
+
+def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> list[Diagnostic]:
+    rest = salvage(data, findings)
+    if rest.flow is None:
+        return []
+    return [
+        Diagnostic(d.code, d.message, d.hint, rest.original(d.path), None, d.severity)
+        for d in check(rest.flow)
+        if d.severity == "error"
+        and not any(repr(name) in d.message for name in rest.dropped)
+        and not (d.path and d.path[0] not in data)  # type: ignore[operator]
+    ]
+
+
+def _place(findings: tuple[Diagnostic, ...], places: Places) -> tuple[Diagnostic, ...]:
+    placed = [d.at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings]
+    once = {(d.span, d.message): d for d in placed}
+    return tuple(sorted(once.values(), key=_position))
+
+
+def _position(finding: Diagnostic) -> tuple[int, int]:
+    span = finding.span or Span("", 0, 0)
+    return span.line, span.column
+
+
+def _read_text(path: FilePath, name: str) -> str:
+    try:
+        if path.is_dir():
+            raise FlowError([_cannot(name, "is a folder, not a flow file", "name a file in it")])
+        if not path.exists():
+            raise FlowError([_cannot(name, "no such file", "check the name; `flowplan new` writes one")])
+        with path.open("rb") as stream:
+            raw = stream.read(MOST_BYTES + 1)
+    except (OSError, ValueError) as error:
+        reason = getattr(error, "strerror", None) or str(error)
+        raise FlowError([_cannot(name, f"cannot be read: {reason}", "check its permissions")]) from None
+    if len(raw) > MOST_BYTES:
+        message = f"larger than {MOST_BYTES // 1_000_000} MB, which no flow file needs"
+        raise FlowError([Diagnostic("FP103", message, "is this the right file?", span=Span(name, 1, 1))])
+    return _decode(raw, name)
+
+
+def _decode(raw: bytes, name: str) -> str:
+    try:
+        return raw.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = raw.count(b"\n", 0, error.start) + 1
+        column = error.start - (raw.rfind(b"\n", 0, error.start) + 1) + 1
+        hint = "save the file as UTF-8"
+        span = Span(name, line, column)
+        raise FlowError([Diagnostic("FP102", "not UTF-8 text", hint, span=span)]) from None
+
+
+def _cannot(name: str, message: str, hint: str) -> Diagnostic:
+    return Diagnostic("FP101", message, hint, span=Span(name, 1, 1))

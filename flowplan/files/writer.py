@@ -1,0 +1,53 @@
+"""Writing results: whole or not at all."""
+
+import os
+import tempfile
+from pathlib import Path
+
+from flowplan.errors import Diagnostic, OutputError
+
+
+def write_atomically(file: str | os.PathLike[str], content: str | bytes) -> None:
+    """Write a file so that a failure leaves the old one whole.
+
+    Parameters
+    ----------
+    file : path-like
+        Where the content goes; the folder must exist.
+    content : str or bytes
+        Text is written as UTF-8.
+
+    Raises
+    ------
+    OutputError
+        FP501, when the folder does not exist or cannot be written.
+    """
+    target = Path(file)
+    raw = content.encode("utf-8") if isinstance(content, str) else content
+    temporary = ""
+    try:
+        if target.is_dir():
+            raise IsADirectoryError(21, "is a folder")
+        handle, temporary = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name}.")
+        with os.fdopen(handle, "wb") as stream:
+            stream.write(raw)
+            stream.flush()
+            os.fsync(stream.fileno())
+        os.chmod(temporary, _mode(target))
+        os.replace(temporary, target)
+    except (OSError, ValueError) as error:
+        if temporary:
+            Path(temporary).unlink(missing_ok=True)
+        reason = getattr(error, "strerror", None) or str(error)
+        hint = "name a file in a folder that exists and can be written"
+        message = f"cannot write {os.fspath(file)!r}: {reason}"
+        raise OutputError([Diagnostic("FP501", message, hint)]) from None
+
+
+def _mode(target: Path) -> int:
+    """Permissions of the file that is replaced, else those a new file would get."""
+    if target.exists():
+        return target.stat().st_mode & 0o777
+    mask = os.umask(0)
+    os.umask(mask)
+    return 0o666 & ~mask

@@ -1,0 +1,143 @@
+"""From plain data to a `Flow`: form errors in the words of the flow file, as many as there are."""
+
+import types
+from collections.abc import Mapping, Sequence
+from typing import Annotated, Any, Literal, Union, get_args, get_origin
+
+from pydantic import BaseModel, ValidationError
+from pydantic_core import ErrorDetails
+
+from flowplan.errors import CODES, Diagnostic, Path, nearest
+from flowplan.model.flow import Flow
+
+#: Longest list of findings that still helps a reader.
+MOST_DIAGNOSTICS = 200
+
+_WRONG_TYPE = {
+    "string_type": "a text belongs here",
+    "dict_type": "a mapping (key: value) belongs here",
+    "model_type": "a mapping (key: value) belongs here",
+    "model_attributes_type": "a mapping (key: value) belongs here",
+    "tuple_type": "a list belongs here",
+    "list_type": "a list belongs here",
+}
+
+
+def build(data: object) -> tuple[Flow | None, tuple[Diagnostic, ...]]:
+    """Validate plain data as a flow.
+
+    Parameters
+    ----------
+    data : object
+        What a YAML or JSON reader returns.
+
+    Returns
+    -------
+    flow : Flow or None
+        The flow, when its form is right.
+    diagnostics : tuple of Diagnostic
+        Everything wrong with its form, each with the path to its place in `data`.
+    """
+    try:
+        return Flow.model_validate(data), ()
+    except ValidationError as error:
+        found = {}
+        for detail in error.errors(include_url=False, include_input=False):
+            diagnostic = _translate(detail, data)
+            found[(diagnostic.path, diagnostic.message)] = diagnostic
+        return None, tuple(found.values())[:MOST_DIAGNOSTICS]
+
+
+def follow(data: object, path: Path) -> object:
+    """Return what stands at a path of plain data, or None."""
+    for step in path:
+        if isinstance(data, dict):
+            data = data.get(step)
+        elif isinstance(data, list) and isinstance(step, int) and step < len(data):
+            data = data[step]
+        else:
+            return None
+    return data
+
+
+def real_path(data: object, loc: Sequence[str | int]) -> Path:
+    """Reduce an error location to the steps that exist in the data.
+
+    The model also knows forms that the file may leave out (the x of a single value) and names of
+    union members; those steps have no place of their own in the file.
+    """
+    path: list[str | int] = []
+    for step in loc:
+        if (isinstance(data, dict) and step in data) or (
+            isinstance(data, list) and isinstance(step, int) and step < len(data)
+        ):
+            data = data[step]
+        else:
+            continue
+        path.append(step)
+    return tuple(path)
+
+
+def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
+    kind, loc = detail["type"], detail["loc"]
+    path = real_path(data, loc)
+    context = detail.get("ctx", {})
+    if kind in CODES:
+        return Diagnostic(kind, context["message"], context["hint"], path)
+    if kind == "extra_forbidden":
+        known = [name for name in _fields_at(loc[:-1]) if name]
+        return Diagnostic("FP201", f"unknown key {loc[-1]!r}", nearest(str(loc[-1]), known), path)
+    if kind == "missing":
+        return Diagnostic("FP202", f"{loc[-1]!r} is missing", f"add `{loc[-1]}: …`", path)
+    if kind == "literal_error":
+        given = follow(data, path)
+        choices = str(context["expected"]).replace("'", "").replace(" or ", ", ")
+        hint = nearest(str(given), choices.split(", "))
+        return Diagnostic("FP204", f"{given!r} is not one of {choices}", hint, path)
+    if kind in ("too_short", "too_long", "string_too_short"):
+        return Diagnostic("FP205", _count_message(kind, context), "", path)
+    message = _WRONG_TYPE.get(kind, detail["msg"].lower())
+    hint = "put it in quotes" if kind == "string_type" else ""
+    return Diagnostic("FP203", message, hint, path)
+
+
+def _count_message(kind: str, context: Mapping[str, Any]) -> str:
+    if kind == "too_long":
+        return f"too many entries; {context.get('max_length')} are wanted"
+    return f"too few entries; at least {context.get('min_length', 1)} are wanted"
+
+
+def _fields_at(loc: Sequence[str | int]) -> list[str]:
+    """Return the keys that the model knows at an error location."""
+    current: Any = Flow
+    for step in loc:
+        current = _descend(current, step)
+    members = [m for m in _members(current) if isinstance(m, type) and issubclass(m, BaseModel)]
+    return [name for model in members for name in model.model_fields]
+
+
+def _descend(annotation: Any, step: str | int) -> Any:
+    for member in _members(annotation):
+        origin, args = get_origin(member), get_args(member)
+        if origin in (tuple, list) and isinstance(step, int):
+            return args[0]
+        if origin is dict:
+            return args[1]
+        if isinstance(member, type) and issubclass(member, BaseModel):
+            field = member.model_fields.get(str(step))
+            if field is not None:
+                return field.annotation
+            rule = member.model_fields.get("rule")
+            if rule is not None and step in get_args(rule.annotation):
+                return member
+    return annotation
+
+
+def _members(annotation: Any) -> list[Any]:
+    """Unfold Annotated and unions into their members."""
+    origin = get_origin(annotation)
+    if origin is Annotated:
+        return _members(get_args(annotation)[0])
+    if origin in (Union, types.UnionType):
+        return [m for part in get_args(annotation) for m in _members(part)]
+    return [] if annotation is type(None) or origin is Literal else [annotation]

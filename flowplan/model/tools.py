@@ -1,0 +1,20 @@
+"""Exposure tools and the errors that every mask printed on them takes along."""
+
+from pydantic import Field
+
+from flowplan.model.base import Described
+from flowplan.model.terms import Size, Term
+
+
+class Tool(Described):
+    """An exposure tool: how well it reads marks, and its own error terms."""
+
+    alignment: Size | None = Field(
+        None, description="Reading marks of an earlier mask, fresh at each exposure and axis."
+    )
+    wafer_alignment: Size | None = Field(
+        None, description="To the notch or flat, for a mask that aligns to `wafer`."
+    )
+    terms: dict[str, Term] = Field(
+        default_factory=dict, description="Named error terms of every exposure on this tool."
+    )

@@ -1,0 +1,1 @@
+"""What people look at: records, charts, the alignment tree and the HTML page."""
