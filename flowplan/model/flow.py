@@ -2,7 +2,7 @@
 
 from collections.abc import Iterator
 from functools import cached_property
-from typing import Annotated, Literal
+from typing import Annotated, Literal, Self
 
 from pydantic import BeforeValidator, Field
 
@@ -85,6 +85,13 @@ class Flow(Described):
         default_factory=dict, description="Layers printed by several masks: id -> their ids."
     )
     pairs: tuple[Pair, ...] = Field((), description="Pairs of layers that must fit each other.")
+
+    def __copy__(self) -> Self:
+        """Copy without the cached views, which an update would make stale."""
+        copied = super().__copy__()
+        for name in ("layers", "shapes"):
+            copied.__dict__.pop(name, None)
+        return copied
 
     @cached_property
     def layers(self) -> dict[str, Layer]:
