@@ -1,0 +1,115 @@
+"""What-if: a flow with one thing changed, as a new flow.
+
+Every function returns a new frozen flow and leaves the old one as it was; the result is complete,
+so it goes to the engine like any other.
+"""
+
+from collections.abc import Iterable, Mapping
+
+from flowplan.model.base import AXES, Axis, PerAxis
+from flowplan.model.flow import Flow
+from flowplan.model.masks import Follows, Mask, Reading, References, SelfAligned, Tones
+from flowplan.model.pairs import AnyPair
+from flowplan.units import Quantity
+
+Readings = tuple[Reading, ...]
+
+
+def with_references(flow: Flow, choices: Mapping[tuple[str, Axis], Readings]) -> Flow:
+    """Return the flow with other references.
+
+    Parameters
+    ----------
+    flow : Flow
+        A checked flow.
+    choices : mapping of (mask id, axis) to readings
+        What each named mask reads along that axis; all others stay.
+
+    Returns
+    -------
+    Flow
+        The changed flow.
+    """
+
+    def changed(mask: Mask) -> Mask:
+        per_axis = {axis: choices.get((mask.id, axis), mask.aligns_to.on(axis)) for axis in AXES}
+        references = References.model_construct(**per_axis)
+        return mask if references == mask.aligns_to else mask.model_copy(update={"aligns_to": references})
+
+    return flow.model_copy(update={"masks": tuple(changed(mask) for mask in flow.masks)})
+
+
+def self_aligned(flow: Flow, layer: str, parent: str, axes: Iterable[Axis] = AXES) -> Flow:
+    """Return the flow with a mask's layer made by a self-aligned step instead.
+
+    Along axes not named the feature follows what the mask read first there, so that a step can be
+    self-aligned in one direction only.
+
+    Parameters
+    ----------
+    flow : Flow
+        A checked flow.
+    layer : str
+        The mask that is dropped; a feature of the same id takes its place.
+    parent : str
+        The layer whose pattern it follows.
+    axes : iterable of {'x', 'y'}
+        Where it follows `parent`.
+
+    Returns
+    -------
+    Flow
+        The changed flow; pairs keep pointing at the id.
+
+    Raises
+    ------
+    KeyError
+        When there is no such mask.
+    """
+    mask = next((m for m in flow.masks if m.id == layer), None)
+    if mask is None:
+        raise KeyError(layer)
+    chosen = set(axes)
+    follows = {a: parent if a in chosen else mask.aligns_to.on(a)[0].mask for a in AXES}
+    feature = SelfAligned(
+        id=mask.id,
+        title=mask.title,
+        notes=mask.notes,
+        owner=mask.owner,
+        why=mask.why,
+        follows=Follows(**follows),
+        tone=Tones(x="same", y="same"),
+        edge=mask.edge,
+    )
+    return flow.model_copy(
+        update={
+            "masks": tuple(m for m in flow.masks if m.id != layer),
+            "self_aligned": (*flow.self_aligned, feature),
+        }
+    )
+
+
+def with_drawn(flow: Flow, name: str, axis: Axis, drawn_nm: float) -> Flow:
+    """Return the flow with another drawn dimension, or limit, of one pair on one axis.
+
+    Parameters
+    ----------
+    flow : Flow
+        A checked flow.
+    name : str
+        The pair's name.
+    axis : {'x', 'y'}
+        The axis.
+    drawn_nm : float
+        The new value [nm].
+    """
+
+    def changed(pair: AnyPair) -> AnyPair:
+        if pair.name != name:
+            return pair
+        key = "limit" if pair.rule == "overlay" else "drawn"
+        old = getattr(pair, key)
+        values = {a: getattr(old, a) for a in AXES} | {axis: Quantity(drawn_nm, "nm")}
+        return pair.model_copy(update={key: PerAxis(**values)})
+
+    return flow.model_copy(update={"pairs": tuple(changed(pair) for pair in flow.pairs)})
