@@ -49,7 +49,15 @@ def load(file: str | os.PathLike[str]) -> Flow:
 def load_with_warnings(file: str | os.PathLike[str]) -> Loaded:
     """Read a flow file and keep the warnings; see `load`."""
     name = os.fspath(file)
-    return parse(_read_text(FilePath(file), name), name)
+    return parse_bytes(read_bytes(file), name)
+
+
+def parse_bytes(raw: bytes, name: str) -> Loaded:
+    """Read a flow from the bytes of a file or of a stream; see `parse`."""
+    if len(raw) > MOST_BYTES:
+        message = f"larger than {MOST_BYTES // 1_000_000} MB, which no flow file needs"
+        raise FlowError([Diagnostic("FP103", message, "is this the right file?", span=Span(name, 1, 1))])
+    return parse(_decode(raw, name), name)
 
 
 def parse(text: str, name: str = "<text>") -> Loaded:
@@ -112,21 +120,25 @@ def _position(finding: Diagnostic) -> tuple[int, int]:
     return span.line, span.column
 
 
-def _read_text(path: FilePath, name: str) -> str:
+def read_bytes(file: str | os.PathLike[str]) -> bytes:
+    """Return the bytes of a file, cut off just after `MOST_BYTES`.
+
+    Raises
+    ------
+    FlowError
+        FP101, when the file cannot be read.
+    """
+    path, name = FilePath(file), os.fspath(file)
     try:
         if path.is_dir():
             raise FlowError([_cannot(name, "is a folder, not a flow file", "name a file in it")])
         if not path.exists():
             raise FlowError([_cannot(name, "no such file", "check the name; `flowplan new` writes one")])
         with path.open("rb") as stream:
-            raw = stream.read(MOST_BYTES + 1)
+            return stream.read(MOST_BYTES + 1)
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or str(error)
         raise FlowError([_cannot(name, f"cannot be read: {reason}", "check its permissions")]) from None
-    if len(raw) > MOST_BYTES:
-        message = f"larger than {MOST_BYTES // 1_000_000} MB, which no flow file needs"
-        raise FlowError([Diagnostic("FP103", message, "is this the right file?", span=Span(name, 1, 1))])
-    return _decode(raw, name)
 
 
 def _decode(raw: bytes, name: str) -> str:

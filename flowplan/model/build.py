@@ -87,6 +87,8 @@ def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
     if kind == "extra_forbidden":
         known = [name for name in _fields_at(loc[:-1]) if name]
         return Diagnostic("FP201", f"unknown key {loc[-1]!r}", nearest(str(loc[-1]), known), path)
+    if kind == "missing" and isinstance(loc[-1], int):
+        return Diagnostic("FP205", f"too few entries; at least {loc[-1] + 1} are wanted", "", path)
     if kind == "missing":
         return Diagnostic("FP202", f"{loc[-1]!r} is missing", f"add `{loc[-1]}: …`", path)
     if kind == "literal_error":

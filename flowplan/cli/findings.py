@@ -1,0 +1,81 @@
+"""Findings on the screen: place, message, the source line with a caret, and a hint."""
+
+import re
+import sys
+from collections.abc import Iterable
+from typing import Any
+
+import typer
+
+from flowplan.cli.streams import has_colour, printable, tell
+from flowplan.errors import Diagnostic, Span
+
+_LINE_END = re.compile(r"\r\n|[\n\r\x85\u2028\u2029]")
+_WIDTH = 74
+_BEFORE = 60
+
+
+def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> None:
+    """Print findings on standard error.
+
+    Parameters
+    ----------
+    findings : iterable of Diagnostic
+        In the order in which they are shown.
+    source : str, optional
+        The text that their places refer to.
+    """
+    lines = _LINE_END.split(source) if source is not None else []
+    coloured = has_colour(sys.stderr)
+    for finding in findings:
+        tell("\n".join(_finding_lines(finding, lines, coloured=coloured)))
+
+
+def count_findings(findings: Iterable[Diagnostic]) -> str:
+    """Return ``2 errors, 1 warning``; empty when there is none."""
+    severities = [f.severity for f in findings]
+    counted = [(severities.count(word), word) for word in ("error", "warning")]
+    return ", ".join(f"{n} {word}{'s' if n != 1 else ''}" for n, word in counted if n)
+
+
+def finding_record(finding: Diagnostic) -> dict[str, Any]:
+    """Return a finding as a JSON-ready record."""
+    span = finding.span
+    return {
+        "file": span.file if span else None,
+        "line": span.line if span else None,
+        "column": span.column if span else None,
+        "severity": finding.severity,
+        "code": finding.code,
+        "message": finding.message,
+        "hint": finding.hint or None,
+    }
+
+
+def _finding_lines(finding: Diagnostic, lines: list[str], *, coloured: bool) -> list[str]:
+    def paint(text: str, **style: Any) -> str:
+        return typer.style(text, **style) if coloured else text
+
+    place = f"{finding.span}: " if finding.span else "flowplan: "
+    word = "warning: " if finding.severity == "warning" else ""
+    tint = "yellow" if word else "red"
+    head = paint(printable(place), bold=True) + paint(word, fg=tint) + printable(finding.message)
+    shown = [f"{head} {paint(f'[{finding.code}]', fg=tint)}"]
+    if finding.span and finding.span.line <= len(lines):
+        text, caret = _excerpt(lines[finding.span.line - 1], finding.span)
+        shown += [f"    {text}", "    " + paint(caret, fg=tint)] if text.strip() else []
+    if finding.hint:
+        shown.append(f"    hint: {printable(finding.hint)}")
+    return shown
+
+
+def _excerpt(line: str, span: Span) -> tuple[str, str]:
+    """Return the part of a line around a place, and the caret that points at it."""
+    at = min(span.column - 1, len(line))
+    start = max(0, at - _BEFORE) if len(line) > _WIDTH else len(line) - len(line.lstrip())
+    start = min(start, at)
+    cut = line[start : start + _WIDTH]
+    lead = "…" if start and line[:start].strip() else ""
+    tail = "…" if start + _WIDTH < len(line) else ""
+    before = lead + printable(line[start:at])
+    return lead + printable(cut) + tail, " " * len(before) + "^"

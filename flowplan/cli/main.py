@@ -1,0 +1,104 @@
+"""The commands of flowplan: what they are called, what they take, and who does the work.
+
+Each command's module is imported when the command runs, so that a light command starts fast.
+"""
+
+import sys
+from typing import Annotated
+
+import typer
+
+from flowplan import __version__
+from flowplan.cli.options import BasisName, Form, Order, TextOrJson, VerdictName
+from flowplan.cli.session import FlowArgument, StrictOption, guarded
+from flowplan.cli.streams import emit
+
+app = typer.Typer(
+    name="flowplan",
+    add_completion=False,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    invoke_without_command=True,
+    context_settings={"help_option_names": ["-h", "--help"]},
+    epilog="Example: flowplan new my.yaml, then flowplan check my.yaml",
+)
+
+_WELCOME = """\
+flowplan new my.yaml       write a starter flow, to change into yours
+flowplan check my.yaml     find its mistakes, and its worst pair
+flowplan report my.yaml    write the report, one HTML page"""
+
+
+def _version(wanted: bool) -> None:
+    if wanted:
+        emit(f"flowplan {__version__}")
+        raise typer.Exit
+
+
+@app.callback()
+def start(
+    context: typer.Context,
+    version: Annotated[  # noqa: ARG001 - the callback answers it
+        bool, typer.Option("--version", callback=_version, is_eager=True, help="Print the version.")
+    ] = False,
+) -> None:
+    """Overlay and registration margins of a wafer process, from one flow file."""
+    if context.invoked_subcommand is None:
+        emit(_WELCOME)
+
+
+@app.command(epilog="Example: flowplan check flows/cmos.yaml --strict")
+@guarded
+def check(
+    flow: FlowArgument,
+    strict: StrictOption = False,
+    form: Annotated[TextOrJson, typer.Option("--format", help="Text or JSON.")] = TextOrJson.TEXT,
+) -> None:
+    """Find every mistake in a flow file; sum up a sound one."""
+    from flowplan.cli.check import check as work
+
+    work(flow, strict=strict, as_json=form is TextOrJson.JSON)
+
+
+@app.command(epilog="Example: flowplan margins flows/cmos.yaml --sort margin --layer GATE")
+@guarded
+def margins(
+    flow: FlowArgument,
+    form: Annotated[
+        Form, typer.Option("--format", help="A table, or a format for other programs.")
+    ] = Form.TABLE,
+    basis: Annotated[
+        BasisName | None, typer.Option(help="Judge on this basis instead of the file's.", show_default=False)
+    ] = None,
+    layer: Annotated[
+        list[str] | None, typer.Option(help="Only pairs of this layer; may be repeated.", metavar="LAYER")
+    ] = None,
+    verdict: Annotated[
+        list[VerdictName] | None,
+        typer.Option(metavar="VERDICT", help="Only pass, tight, fail or unjudged; may be repeated."),
+    ] = None,
+    sort: Annotated[Order, typer.Option(help="In the file's order, or the least margin first.")] = Order.FILE,
+    every_pair: Annotated[
+        bool, typer.Option("--every-pair", help="The overlay of every two layers, judged by no limit.")
+    ] = False,
+    strict: StrictOption = False,
+) -> None:
+    """Print the margin of every pair of layers."""
+    from flowplan.cli.margins import Choice
+    from flowplan.cli.margins import margins as work
+
+    choice = Choice(
+        form=form,
+        order=sort,
+        basis=basis.value if basis else None,
+        layers=tuple(layer or ()),
+        verdicts=tuple(v.value for v in verdict or ()),
+        every_pair=every_pair,
+        strict=strict,
+    )
+    work(flow, choice)
+
+
+def run() -> None:
+    """Run flowplan on the command line's arguments and exit with its status."""
+    app(sys.argv[1:], prog_name="flowplan")

@@ -1,0 +1,161 @@
+"""``flowplan margins``: every margin as a table or for other programs."""
+
+import csv
+import io
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import typer
+
+from flowplan.cli.check import verdict_line, worst_line
+from flowplan.cli.options import Form, Order
+from flowplan.cli.session import known_layer, read_flow
+from flowplan.cli.status import Status
+from flowplan.cli.streams import emit, emit_json, printable
+from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
+from flowplan.engine.analysis import Result, analyse, every_pair
+from flowplan.engine.results import Entry, Verdict
+from flowplan.errors import Diagnostic, UsageError
+from flowplan.model.flow import BASES, Basis
+from flowplan.report.records import entry_record, margins_document
+from flowplan.report.textfigures import Figures
+
+
+@dataclass(frozen=True, slots=True)
+class Choice:
+    """Which margins are shown, and how."""
+
+    form: Form
+    order: Order
+    basis: Basis | None
+    layers: tuple[str, ...]
+    verdicts: tuple[Verdict, ...]
+    every_pair: bool
+    strict: bool
+
+
+def margins(name: str, choice: Choice) -> None:
+    """Print the margins of a flow."""
+    if choice.every_pair and choice.strict:
+        hint = "leave one of them out"
+        message = "--every-pair lists overlays without a limit, so --strict has nothing to judge"
+        raise UsageError([Diagnostic("FP602", message, hint)])
+    flow = read_flow(name)
+    if choice.basis:
+        flow = flow.model_copy(update={"basis": choice.basis})
+    wanted = {
+        member for layer in choice.layers for member in flow.expand(known_layer(flow, layer, split=True))
+    }
+    result = analyse(flow, every_pair(flow) if choice.every_pair else None)
+    of_layers = tuple(e for e in result.entries if not wanted or wanted & set(e.layers))
+    shown = tuple(e for e in of_layers if not choice.verdicts or e.verdict in choice.verdicts)
+    if choice.order is Order.MARGIN:
+        shown = tuple(sorted(shown, key=lambda e: _room(result, e)))
+    _PRINTERS[choice.form](Result(result.engine, shown))
+    if choice.strict and any(e.verdict == "fail" for e in of_layers):
+        raise typer.Exit(Status.FAILS)
+
+
+def _room(result: Result, entry: Entry) -> float:
+    """Return what is left; where nothing is judged, what the errors take, after all that is judged."""
+    return float("inf") if entry.margin is None else result.margin(entry)
+
+
+_LEADING = (Column("pair", folds=True), Column("layers", folds=True), Column("axis"), Column("through"))
+_JUDGED = (Column("need", "right"), Column("margin", "right"), Column("verdict"))
+_OVERLAY = (Column("overlay", "right"),)
+
+
+def _table(result: Result) -> tuple[tuple[Column, ...], list[list[str]]]:
+    """Return the columns and cells for people: overlays alone where nothing is judged."""
+    basis = result.flow.basis
+    figures = Figures.fitting(result.flow.unit, [e.need.on(basis) for e in result.entries])
+    judged = any(e.margin is not None for e in result.entries)
+    rows = []
+    for entry in result.entries:
+        row = [entry.pair.name, " - ".join(entry.layers), entry.axis, _through(entry)]
+        row.append(figures.text(_taken(entry, basis)))
+        if judged:
+            row += [figures.text(entry.margin.on(basis) if entry.margin else None), entry.verdict]
+        rows.append(row)
+    return (*_LEADING, *(_JUDGED if judged else _OVERLAY)), rows
+
+
+def _taken(entry: Entry, basis: Basis) -> float:
+    """Return what the errors take; without a limit the known offset belongs to it."""
+    return entry.need.on(basis) + (abs(entry.overlay.offset) if entry.margin is None else 0.0)
+
+
+def _through(entry: Entry) -> str:
+    """Return the common reference, ``direct`` when one layer is the other's reference."""
+    if len(entry.chain.layers) == 2:
+        return "direct"
+    return entry.chain.through + (" *" if entry.chain.one_of_several else "")
+
+
+def _show(result: Result) -> None:
+    flow = result.flow
+    title = f"{flow.flow}, revision {flow.revision}" if flow.revision else flow.flow
+    show_note(title, strong=True)
+    show_note(f"lengths in {flow.unit}, {flow.basis} basis, {flow.confidence:g} sigma")
+    emit("")
+    if not result.entries:
+        emit("no pair fits what was asked for" if flow.pairs else "the flow has no pairs")
+        return
+    columns, rows = _table(result)
+    show_table(columns, rows)
+    emit("")
+    emit(f"{printable(verdict_line(result))}; worst: {printable(worst_line(result))}")
+    if any(e.chain.one_of_several for e in result.entries):
+        show_note("* one of several ways: references are averaged")
+
+
+def _markdown(result: Result) -> None:
+    columns, rows = _table(result)
+    unit = result.flow.unit
+    named = [
+        Column(f"{c.name} [{unit}]", c.align) if c.align == "right" else Column(c.name, c.align)
+        for c in columns
+    ]
+    emit("\n".join(markdown_lines(named, rows)))
+
+
+CSV_COLUMNS = (
+    "pair", "rule", "first", "second", "axis", "chain", "through", "unit", "drawn", "keep", "nominal",
+    "offset", "bound", "random", "overlay_offset", "overlay_bound", "overlay_random",
+    "need_mixed", "need_rss", "need_linear", "margin_mixed", "margin_rss", "margin_linear",
+    "verdict", "cpk", "fail_ppm", "point_X", "point_Y", "point_x", "point_y", "chain_rss",
+)  # fmt: skip
+
+
+def _csv(result: Result) -> None:
+    text = io.StringIO()
+    writer = csv.DictWriter(text, CSV_COLUMNS, lineterminator="\n")
+    writer.writeheader()
+    for entry in result.entries:
+        writer.writerow(_csv_row(entry, result.flow.unit))
+    emit(text.getvalue().rstrip("\n"))
+
+
+def _csv_row(entry: Entry, unit: str) -> dict[str, Any]:
+    record = entry_record(entry, unit)
+    row = {key: record[key] for key in CSV_COLUMNS if key in record}
+    row |= {"first": entry.layers[0], "second": entry.layers[1], "unit": unit}
+    row["chain"] = " > ".join(entry.chain.layers)
+    row |= _flat("overlay", record["overlay"], ("offset", "bound", "random"))
+    row |= _flat("need", record["need"], BASES)
+    row |= _flat("margin", record["margin"], BASES)
+    return row | _flat("point", record["point"], ("X", "Y", "x", "y"))
+
+
+def _flat(name: str, record: dict[str, Any] | None, keys: Sequence[str]) -> dict[str, Any]:
+    return {f"{name}_{key}": (record or {}).get(key) for key in keys}
+
+
+_PRINTERS = {
+    Form.TABLE: _show,
+    Form.JSON: lambda result: emit_json(margins_document(result)),
+    Form.CSV: _csv,
+    Form.MARKDOWN: _markdown,
+}

@@ -1,0 +1,50 @@
+"""Words that options choose from."""
+
+from enum import StrEnum
+
+
+class TextOrJson(StrEnum):
+    """Text for people or JSON for programs."""
+
+    TEXT = "text"
+    JSON = "json"
+
+
+class Form(StrEnum):
+    """How margins are printed."""
+
+    TABLE = "table"
+    JSON = "json"
+    CSV = "csv"
+    MARKDOWN = "markdown"
+
+
+class Order(StrEnum):
+    """Order of the margins."""
+
+    FILE = "file"
+    MARGIN = "margin"
+
+
+class BasisName(StrEnum):
+    """How bounds and random parts add up."""
+
+    MIXED = "mixed"
+    RSS = "rss"
+    LINEAR = "linear"
+
+
+class VerdictName(StrEnum):
+    """The four verdicts."""
+
+    PASS = "pass"  # noqa: S105 - a verdict
+    TIGHT = "tight"
+    FAIL = "fail"
+    UNJUDGED = "unjudged"
+
+
+class AxisName(StrEnum):
+    """One axis."""
+
+    X = "x"
+    Y = "y"

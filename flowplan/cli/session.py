@@ -1,0 +1,127 @@
+"""What every command shares: its arguments, reading the flow, and how it ends."""
+
+import functools
+import os
+import sys
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Annotated, Any
+
+import typer
+
+from flowplan.cli.findings import count_findings, show_findings
+from flowplan.cli.status import Status
+from flowplan.cli.streams import printable, tell
+from flowplan.errors import Diagnostic, FlowError, FlowplanError, UsageError, nearest
+from flowplan.model.base import WAFER
+from flowplan.model.flow import Flow
+
+#: Set to anything to see the whole trace of an unforeseen fault.
+DEBUG = "FLOWPLAN_DEBUG"
+STDIN = "-"
+
+FlowArgument = Annotated[
+    str,
+    typer.Argument(metavar="FLOW", help="The flow file (YAML); - reads standard input.", show_default=False),
+]
+StrictOption = Annotated[bool, typer.Option("--strict", help="Exit with status 1 if a pair fails.")]
+
+
+@dataclass(frozen=True, slots=True)
+class Opened:
+    """A flow that was read, and what was found on the way."""
+
+    flow: Flow
+    warnings: tuple[Diagnostic, ...]
+    text: str
+
+    def show_warnings(self) -> None:
+        """Print the warnings on standard error."""
+        show_findings(self.warnings, self.text)
+
+
+class RefusedError(FlowError):
+    """A flow with errors, together with its text."""
+
+    def __init__(self, error: FlowError, text: str) -> None:
+        super().__init__(error.diagnostics)
+        self.text = text
+
+
+def open_flow(name: str) -> Opened:
+    """Read a flow file, or standard input for ``-``.
+
+    Raises
+    ------
+    RefusedError
+        When the flow is at fault; holds the text for showing the places.
+    """
+    from flowplan.files.reader import MOST_BYTES, parse_bytes, read_bytes
+
+    if name == STDIN:
+        name, raw = "<stdin>", sys.stdin.buffer.read(MOST_BYTES + 1)
+    else:
+        raw = read_bytes(name)
+    text = raw.decode("utf-8-sig", "replace")
+    try:
+        loaded = parse_bytes(raw, name)
+    except FlowError as error:
+        raise RefusedError(error, text) from None
+    return Opened(loaded.flow, loaded.warnings, text)
+
+
+def read_flow(name: str) -> Flow:
+    """Read a flow and show its warnings."""
+    opened = open_flow(name)
+    opened.show_warnings()
+    return opened.flow
+
+
+def known_layer(flow: Flow, name: str, *, wafer: bool = False, split: bool = False) -> str:
+    """Return a layer's name as asked for on the command line, or refuse it.
+
+    Parameters
+    ----------
+    flow : Flow
+        The flow.
+    name : str
+        What was asked for.
+    wafer, split : bool
+        Whether the wafer, or a split layer, is an answer too.
+
+    Raises
+    ------
+    UsageError
+        FP601, naming the nearest layer; FP602 for a split layer where one mask is wanted.
+    """
+    if name in flow.layers or (wafer and name == WAFER) or (split and name in flow.split_layers):
+        return name
+    if name in flow.split_layers:
+        hint = "name one of " + ", ".join(flow.split_layers[name])
+        raise UsageError([Diagnostic("FP602", f"{name!r} is a split layer, not one mask", hint)])
+    known = [*flow.layers, *(flow.split_layers if split else ())]
+    raise UsageError([Diagnostic("FP601", f"unknown layer {name!r}", nearest(name, known))])
+
+
+def guarded(command: Callable[..., None]) -> Callable[..., None]:
+    """Let a command end with a clear message and status, never with a traceback."""
+
+    @functools.wraps(command)
+    def run(*args: Any, **kwargs: Any) -> None:
+        try:
+            command(*args, **kwargs)
+        except FlowplanError as error:
+            show_findings(error.diagnostics, getattr(error, "text", None))
+            if len(error.diagnostics) > 1:
+                tell(count_findings(error.diagnostics))
+            raise typer.Exit(Status.INPUT) from None
+        except typer.Exit:
+            raise
+        except Exception as fault:
+            if os.environ.get(DEBUG):
+                raise
+            what = printable(f"{type(fault).__name__}: {fault}")[:200]
+            tell(f"flowplan: unforeseen fault: {what} (set {DEBUG}=1 to see where)")
+            raise typer.Exit(Status.INPUT) from None
+
+    return run

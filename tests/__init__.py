@@ -1,0 +1,1 @@
+"""Tests of flowplan; see DEVELOPERS.md for what each folder may assert."""
