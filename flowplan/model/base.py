@@ -158,6 +158,9 @@ class PerAxis(Model):
         """Return the value along one axis."""
         return self.x if axis == "x" else self.y
 
+    def __str__(self) -> str:
+        return str(self.x) if self.x == self.y else f"x {self.x}, y {self.y}"
+
     def each(self, rule: Callable[[Quantity], Quantity]) -> "PerAxis":
         """Apply a rule that returns or refuses to both values."""
         rule(self.x)

@@ -1,0 +1,152 @@
+"""Plans side by side: pair by pair, what each of them leaves."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from flowplan.engine.analysis import Result
+from flowplan.engine.results import Entry, Verdict
+from flowplan.model.base import Axis
+from flowplan.model.differences import Difference, differences
+from flowplan.model.masks import SelfAligned
+
+Key = tuple[str, str, str, Axis]
+
+
+@dataclass(frozen=True, slots=True)
+class Plan:
+    """One of the plans compared.
+
+    Attributes
+    ----------
+    name : str
+        What it is called.
+    result : Result
+        Its margins.
+    changes : tuple of Difference
+        What it changes against the first plan; empty for that one.
+    """
+
+    name: str
+    result: Result
+    changes: tuple[Difference, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    """One pair of layers on one axis in every plan.
+
+    Attributes
+    ----------
+    pair : str
+        The pair's name.
+    layers : tuple of str
+        The two layers.
+    axis : {'x', 'y'}
+        The axis.
+    entries : tuple of (Entry or None)
+        One a plan; None where the plan does not have the pair.
+    margins : tuple of (float or None)
+        Margins on each plan's own basis [nm].
+    settled : tuple of bool
+        Where a self-aligned step leaves no overlay error at all.
+    """
+
+    pair: str
+    layers: tuple[str, str]
+    axis: Axis
+    entries: tuple[Entry | None, ...]
+    margins: tuple[float | None, ...]
+    settled: tuple[bool, ...]
+
+    def change(self, plan: int) -> float | None:
+        """Return how much larger the margin is than in the first plan [nm]; None if not in both."""
+        first, other = self.margins[0], self.margins[plan]
+        return None if first is None or other is None else other - first
+
+    def verdicts(self) -> tuple[Verdict | None, ...]:
+        """Return the verdict in each plan."""
+        return tuple(None if e is None else e.verdict for e in self.entries)
+
+    def status(self, plan: int) -> str:
+        """Return how the pair fared: appears, disappears, settled, better, worse or same."""
+        first, other = self.entries[0], self.entries[plan]
+        if first is None or other is None:
+            return "appears" if other is not None else "disappears" if first is not None else "absent"
+        if self.settled[plan] and not self.settled[0]:
+            return "settled"
+        change = self.change(plan)
+        if change is None or abs(change) <= 1e-9 * (abs(self.margins[0] or 0) + 1e-9):
+            return "same"
+        return "better" if change > 0 else "worse"
+
+
+@dataclass(frozen=True, slots=True)
+class Comparison:
+    """Several plans side by side; the first is what the others are measured against."""
+
+    plans: tuple[Plan, ...]
+    rows: tuple[Row, ...]
+
+
+def compare(named: Sequence[tuple[str, Result]]) -> Comparison:
+    """Lay plans side by side.
+
+    Parameters
+    ----------
+    named : sequence of (str, Result)
+        Plans with their names, the base first; pairs are matched by name, layers and axis.
+
+    Returns
+    -------
+    Comparison
+        Rows in the order of the first plan, then those that appear in later ones.
+
+    Raises
+    ------
+    ValueError
+        With fewer than two plans.
+    """
+    if len(named) < 2:
+        msg = "two plans or more are needed"
+        raise ValueError(msg)
+    base = named[0][1]
+    plans = tuple(
+        Plan(name, result, differences(base.flow, result.flow) if result is not base else ())
+        for name, result in named
+    )
+    tables = [{_key(e): e for e in plan.result.entries} for plan in plans]
+    keys = dict.fromkeys(key for table in tables for key in table)
+    return Comparison(plans, tuple(_row(key, plans, tables) for key in keys))
+
+
+def _key(entry: Entry) -> Key:
+    return (entry.pair.name, *entry.layers, entry.axis)
+
+
+def _row(key: Key, plans: Sequence[Plan], tables: Sequence[dict[Key, Entry]]) -> Row:
+    entries = tuple(table.get(key) for table in tables)
+    margins = tuple(
+        None if e is None or e.margin is None else plan.result.margin(e)
+        for plan, e in zip(plans, entries, strict=True)
+    )
+    settled = tuple(
+        e is not None and is_settled(plan.result, e) for plan, e in zip(plans, entries, strict=True)
+    )
+    return Row(key[0], (key[1], key[2]), key[3], entries, margins, settled)
+
+
+def is_settled(result: Result, entry: Entry) -> bool:
+    """Whether a self-aligned step leaves no overlay error between the entry's layers.
+
+    Parameters
+    ----------
+    result : Result
+        The analysis that the entry belongs to.
+    entry : Entry
+        One of its entries.
+    """
+    parts = entry.overlay
+    if parts.random or parts.bound or parts.offset:
+        return False
+    layers = result.flow.layers
+    return any(isinstance(layers.get(name), SelfAligned) for name in entry.chain.layers)

@@ -1,0 +1,177 @@
+"""Variants: a named partial flow laid over the base, key by key and id by id.
+
+The merge works on plain data, before the model is built, so that a variant is judged by exactly the
+rules that a whole file is. `Provenance` remembers where each merged value was written, so that a
+finding points at the variant's line where the variant is at fault.
+"""
+
+import copy
+from dataclasses import dataclass, field
+from typing import Any
+
+from flowplan.errors import Diagnostic, Path, nearest
+
+Data = dict[str, Any]
+
+#: Parts of the file that are lists of entries with a key of their own.
+KEYED_LISTS = {"masks": "id", "self_aligned": "id", "pairs": "name"}
+#: Keys of a variant that are about the variant itself.
+OWN_KEYS = frozenset({"name", "note", "title", "notes", "owner", "why", "drop"})
+
+
+@dataclass(slots=True)
+class Provenance:
+    """Where the values of a merged flow were written.
+
+    Attributes
+    ----------
+    rows : dict
+        For each keyed list of the merged flow, the path in the file of every entry.
+    written : dict
+        Paths in the merged flow that a variant wrote, each with its path in the file.
+    """
+
+    rows: dict[str, list[Path]] = field(default_factory=dict)
+    written: dict[Path, Path] = field(default_factory=dict)
+
+    def in_file(self, path: Path) -> Path:
+        """Translate a path in the merged flow to the path where it was written."""
+        for length in range(len(path), 0, -1):
+            place = self.written.get(path[:length])
+            if place is not None:
+                return (*place, *path[length:])
+        if len(path) > 1 and isinstance(path[1], int) and path[0] in self.rows:
+            rows = self.rows[str(path[0])]
+            if path[1] < len(rows):
+                return (*rows[path[1]], *path[2:])
+        return path
+
+
+@dataclass(frozen=True, slots=True)
+class Merged:
+    """A base with a variant laid over it: plain data, its provenance and what went wrong."""
+
+    data: Data
+    provenance: Provenance
+    findings: tuple[Diagnostic, ...]
+
+
+def merge_variant(base: Data, index: int) -> Merged:
+    """Lay one of a file's variants over the rest of the file.
+
+    Parameters
+    ----------
+    base : dict
+        Plain data of the whole file; it is not changed.
+    index : int
+        Which entry of its ``variants``.
+
+    Returns
+    -------
+    Merged
+        Data without ``variants``; findings name ids that the variant changes or drops in vain.
+    """
+    return _Merge(base, index).run()
+
+
+class _Merge:
+    def __init__(self, base: Data, index: int) -> None:
+        self.variant: Data = base["variants"][index]
+        self.at: Path = ("variants", index)
+        self.data: Data = copy.deepcopy({k: v for k, v in base.items() if k != "variants"})
+        self.provenance = Provenance(
+            {part: [(part, i) for i in range(len(self._list(part)))] for part in KEYED_LISTS}
+        )
+        self.findings: list[Diagnostic] = []
+
+    def run(self) -> Merged:
+        self._drop()
+        for part, value in self.variant.items():
+            if part in OWN_KEYS:
+                continue
+            if part in KEYED_LISTS and isinstance(value, dict):
+                for name, changes in value.items():
+                    self._change_entry(part, name, changes)
+            else:
+                self._lay_over(self.data, part, value, (part,), (*self.at, part))
+        return Merged(self.data, self.provenance, tuple(self.findings))
+
+    def _list(self, part: str) -> list[Any]:
+        found = self.data.get(part)
+        return found if isinstance(found, list) else []
+
+    def _names(self, part: str) -> list[str]:
+        key = KEYED_LISTS[part]
+        return [str(e.get(key, "")) if isinstance(e, dict) else "" for e in self._list(part)]
+
+    def _drop(self) -> None:
+        dropped = self.variant.get("drop") or []
+        for i, name in enumerate(dropped if isinstance(dropped, list) else []):
+            if not any(self._remove(part, name) for part in KEYED_LISTS):
+                known = [n for part in KEYED_LISTS for n in self._names(part) if n]
+                message = f"the variant drops {name!r}, which the flow does not have"
+                hint = nearest(str(name), known)
+                self.findings.append(Diagnostic("FP301", message, hint, (*self.at, "drop", i)))
+
+    def _remove(self, part: str, name: object) -> bool:
+        names = self._names(part)
+        if name not in names:
+            return False
+        place = names.index(str(name))
+        self._list(part).pop(place)
+        self.provenance.rows[part].pop(place)
+        return True
+
+    def _change_entry(self, part: str, name: str, changes: object) -> None:
+        place = (*self.at, part, name)
+        if part == "self_aligned":
+            # A step that becomes self-aligned keeps its id, so that pairs keep pointing at it.
+            self._remove("masks", name)
+        names = self._names(part)
+        if name in names:
+            at = names.index(name)
+            self._lay_over(self._list(part), at, changes, (part, at), place)
+        elif part == "masks":
+            message = f"the variant changes {name!r}, which is not a mask of the flow"
+            hint = nearest(name, [n for n in names if n])
+            self.findings.append(Diagnostic("FP301", message, hint, place))
+        else:
+            self._append(part, name, changes, place)
+
+    def _append(self, part: str, name: str, entry: object, place: Path) -> None:
+        rows = self.data.setdefault(part, [])
+        if isinstance(entry, dict):
+            entry = {KEYED_LISTS[part]: name} | entry
+        rows.append(copy.deepcopy(entry))
+        self.provenance.rows[part].append(place)
+
+    def _lay_over(self, parent: Any, key: Any, value: object, path: Path, place: Path) -> None:
+        """Replace a value, or merge mappings whose keys are names; null takes a key away."""
+        old = parent[key] if isinstance(parent, list) else parent.get(key)
+        if value is None and isinstance(parent, dict):
+            parent.pop(key, None)
+        elif isinstance(old, dict) and isinstance(value, dict) and _merges(path):
+            for inner, changed in value.items():
+                self._lay_over(old, inner, changed, (*path, inner), (*place, inner))
+        else:
+            parent[key] = copy.deepcopy(value)
+            self.provenance.written[path] = place
+
+
+def _merges(path: Path) -> bool:
+    """Whether a mapping at this path is merged key by key rather than replaced.
+
+    Tools, masks, features, pairs and their terms are; a value such as ``aligns_to`` or ``cd`` is one
+    statement and is replaced whole.
+    """
+    if path[0] in KEYED_LISTS or path[0] == "tools":
+        inner = path[2:]
+        return not inner or inner[0] == "terms"
+    return path[0] in ("wafer", "field")
+
+
+def variant_names(base: Data) -> tuple[str, ...]:
+    """Return the names of a file's variants, in file order."""
+    variants = base.get("variants")
+    entries = variants if isinstance(variants, list) else []
+    return tuple(str(v.get("name", "")) for v in entries if isinstance(v, dict))
