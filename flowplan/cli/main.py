@@ -114,6 +114,22 @@ def chain(
     work(flow, first, second, (axis.value,) if axis else ("x", "y"), as_json=form is TextOrJson.JSON)
 
 
+@app.command(epilog="Example: flowplan tree flows/cmos.yaml -o tree.svg")
+@guarded
+def tree(
+    flow: FlowArgument,
+    output: Annotated[
+        str | None,
+        typer.Option("-o", "--output", metavar="FILE", help="Draw to this .svg, .png or .dot file instead."),
+    ] = None,
+    axis: Annotated[AxisName | None, typer.Option(help="One axis; both when left out.")] = None,
+) -> None:
+    """Show who aligns to whom."""
+    from flowplan.cli.tree import tree as work
+
+    work(flow, output, axis.value if axis else None)
+
+
 def run() -> None:
     """Run flowplan on the command line's arguments and exit with its status."""
     app(sys.argv[1:], prog_name="flowplan")
