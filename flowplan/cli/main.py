@@ -9,7 +9,7 @@ from typing import Annotated
 import typer
 
 from flowplan import __version__
-from flowplan.cli.options import BasisName, Form, Order, TextOrJson, VerdictName
+from flowplan.cli.options import AxisName, BasisName, Form, Order, TextOrJson, VerdictName
 from flowplan.cli.session import FlowArgument, StrictOption, guarded
 from flowplan.cli.streams import emit
 
@@ -97,6 +97,37 @@ def margins(
         strict=strict,
     )
     work(flow, choice)
+
+
+@app.command(epilog="Example: flowplan chain flows/cmos.yaml CONTACT METAL1 --axis x")
+@guarded
+def chain(
+    flow: FlowArgument,
+    first: Annotated[str, typer.Argument(metavar="A", help="A layer, or wafer.", show_default=False)],
+    second: Annotated[str, typer.Argument(metavar="B", help="Another layer.", show_default=False)],
+    axis: Annotated[AxisName | None, typer.Option(help="One axis; both when left out.")] = None,
+    form: Annotated[TextOrJson, typer.Option("--format", help="Text or JSON.")] = TextOrJson.TEXT,
+) -> None:
+    """Explain the overlay of two layers: chain, what cancels, sources, direct alignment."""
+    from flowplan.cli.chain import chain as work
+
+    work(flow, first, second, (axis.value,) if axis else ("x", "y"), as_json=form is TextOrJson.JSON)
+
+
+@app.command(epilog="Example: flowplan tree flows/cmos.yaml -o tree.svg")
+@guarded
+def tree(
+    flow: FlowArgument,
+    output: Annotated[
+        str | None,
+        typer.Option("-o", "--output", metavar="FILE", help="Draw to this .svg, .png or .dot file instead."),
+    ] = None,
+    axis: Annotated[AxisName | None, typer.Option(help="One axis; both when left out.")] = None,
+) -> None:
+    """Show who aligns to whom."""
+    from flowplan.cli.tree import tree as work
+
+    work(flow, output, axis.value if axis else None)
 
 
 def run() -> None:

@@ -89,9 +89,8 @@ def _taken(entry: Entry, basis: Basis) -> float:
 
 def _through(entry: Entry) -> str:
     """Return the common reference, ``direct`` when one layer is the other's reference."""
-    if len(entry.chain.layers) == 2:
-        return "direct"
-    return entry.chain.through + (" *" if entry.chain.one_of_several else "")
+    way = "direct" if len(entry.chain.layers) == 2 else entry.chain.through
+    return f"{way} *" if entry.chain.one_of_several else way
 
 
 def _show(result: Result) -> None:

@@ -91,4 +91,7 @@ def _show_rich(columns: Sequence[Column], rows: list[list[str]], indent: int) ->
         )
     for row in rows:
         table.add_row(*(Text(cell, style=_STYLES.get(cell, "")) for cell in row))
-    Console(highlight=False).print(Padding(table, (0, 0, 0, indent)))
+    console = Console(highlight=False)
+    with console.capture() as captured:
+        console.print(Padding(table, (0, 0, 0, indent)))
+    emit("\n".join(line.rstrip() for line in captured.get().splitlines()))

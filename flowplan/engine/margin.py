@@ -237,7 +237,7 @@ def _entries(
                 need=at_need,
                 point=view.sites.point(int(worst[i])) if shaped[i] else None,
                 chain_rss=None if np.isnan(hand[i]) else float(hand[i]),
-                budget=_budget(view, figures, i),
+                budget=budget_of(view, figures, i),
                 drawn=judged.drawn,
                 nominal=judged.nominal,
                 margin=judged.margin,
@@ -249,7 +249,8 @@ def _entries(
     return entries
 
 
-def _budget(view: AxisView, figures: Figures, i: int) -> Budget:
+def budget_of(view: AxisView, figures: Figures, i: int) -> Budget:
+    """Return row i of some figures broken into its sources."""
     taking_part = np.flatnonzero(figures.amounts[i])
     return Budget(
         view.placement.sources,

@@ -1,5 +1,6 @@
 """What every part of the flow file shares: strict frozen models, quantities and per-axis values."""
 
+import copy
 import math
 from collections.abc import Callable
 from typing import Annotated, Any, Literal
@@ -21,13 +22,17 @@ from flowplan.units import UNITS, Dimension, Quantity, UnitError, parse_quantity
 Axis = Literal["x", "y"]
 AXES: tuple[Axis, Axis] = ("x", "y")
 
+_MICRO_SPELLINGS = [
+    f"{sign}{base}" for sign in ("\N{MICRO SIGN}", "\N{GREEK SMALL LETTER MU}") for base in ("m", "rad")
+]
+
 QUANTITY_SCHEMA: dict[str, Any] = {
     "anyOf": [
         {"type": "number"},
         {
             "type": "string",
             "pattern": r"^\s*[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?\s*("
-            + "|".join([*UNITS, "µm", "µrad"])
+            + "|".join([*UNITS, *_MICRO_SPELLINGS])
             + r")?\s*$",
         },
     ]
@@ -88,7 +93,7 @@ class _QuantityAnnotation:
     def __get_pydantic_json_schema__(
         cls, schema: CoreSchema, handler: GetJsonSchemaHandler
     ) -> dict[str, Any]:
-        return QUANTITY_SCHEMA
+        return copy.deepcopy(QUANTITY_SCHEMA)  # pydantic adds each field's own default to it
 
 
 def _written(quantity: Quantity) -> float | str:
@@ -208,7 +213,7 @@ Share = Annotated[
     BeforeValidator(
         _read_share,
         json_schema_input_type=Annotated[float, Field(ge=0, le=1)]
-        | Annotated[str, Field(pattern=r"^\s*\d+\.?\d*\s*%\s*$")],
+        | Annotated[str, Field(pattern=r"^\s*\+?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?\s*%\s*$")],
     ),
 ]
 

@@ -43,7 +43,9 @@ FileUnit = Annotated[
     str,
     BeforeValidator(
         _length_unit,
-        json_schema_input_type=Literal["nm", "um", "µm", "mm", "cm", "in"],
+        json_schema_input_type=Literal[
+            "nm", "um", "\N{MICRO SIGN}m", "\N{GREEK SMALL LETTER MU}m", "mm", "cm", "in"
+        ],
     ),
 ]
 

@@ -41,7 +41,7 @@ class _DrawnPair(_Pair):
 class Enclosure(_DrawnPair):
     """One layer lies inside another with a drawn border on every side."""
 
-    rule: Literal["enclosure"]
+    rule: Literal["enclosure"] = Field(description="How the two layers must fit.")
     inner: Id = Field(description="The layer that lies inside.")
     outer: Id = Field(description="The layer around it.")
 
@@ -59,7 +59,7 @@ class Enclosure(_DrawnPair):
 class Extension(_DrawnPair):
     """One layer reaches past the edge of another."""
 
-    rule: Literal["extension"]
+    rule: Literal["extension"] = Field(description="How the two layers must fit.")
     of: Id = Field(description="The layer that reaches out.")
     past: Id = Field(description="The layer that it must reach past.")
 
@@ -89,7 +89,7 @@ class _Between(_Pair):
 class Spacing(_DrawnPair, _Between):
     """Two layers keep apart."""
 
-    rule: Literal["spacing"]
+    rule: Literal["spacing"] = Field(description="How the two layers must fit.")
 
     @property
     def edge_signs(self) -> tuple[int, int]:
@@ -100,7 +100,7 @@ class Spacing(_DrawnPair, _Between):
 class Overlap(_DrawnPair, _Between):
     """Two layers overlap."""
 
-    rule: Literal["overlap"]
+    rule: Literal["overlap"] = Field(description="How the two layers must fit.")
 
     @property
     def edge_signs(self) -> tuple[int, int]:
@@ -111,7 +111,7 @@ class Overlap(_DrawnPair, _Between):
 class Overlay(_Between):
     """The overlay of two layers against a limit, without edges; no limit, no verdict."""
 
-    rule: Literal["overlay"]
+    rule: Literal["overlay"] = Field(description="How the two layers must fit.")
     limit: NonNegativeLengths | None = Field(None, description="Largest allowed overlay error.")
 
     @property

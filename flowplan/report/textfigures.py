@@ -7,7 +7,6 @@ from statistics import median
 
 from flowplan.units import convert
 
-_DIGITS = 4
 _MOST_DECIMALS = 6
 
 
@@ -27,13 +26,13 @@ class Figures:
     decimals: int
 
     @classmethod
-    def fitting(cls, unit: str, lengths_nm: Iterable[float]) -> "Figures":
-        """Choose the decimals so that the median of some lengths [nm] shows four digits."""
+    def fitting(cls, unit: str, lengths_nm: Iterable[float], digits: int = 4) -> "Figures":
+        """Choose the decimals so that the median of some lengths [nm] shows this many digits."""
         sizes = [abs(convert(v, "nm", unit)) for v in lengths_nm if v and math.isfinite(v)]
         if not sizes:
             return cls(unit, 1)
         before_point = math.floor(math.log10(median(sizes))) + 1
-        return cls(unit, min(_MOST_DECIMALS, max(0, _DIGITS - max(1, before_point))))
+        return cls(unit, min(_MOST_DECIMALS, max(0, digits - max(1, before_point))))
 
     def text(self, length_nm: float | None) -> str:
         """Return a length without its unit; empty for none, never ``-0.0``."""
