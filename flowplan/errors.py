@@ -51,6 +51,8 @@ CODES: dict[str, str] = {
     "FP501": "the output cannot be written",
     "FP601": "unknown layer on the command line",
     "FP602": "the question does not fit the flow",
+    "FP603": "a mask both freed and pinned",
+    "FP604": "no mask has a choice of references",
 }
 
 

@@ -91,33 +91,48 @@ def place(flow: Flow) -> Placement:
     Placement
         Amounts of every source in every layer.
     """
-    walk = _Walk(flow, SourceBook())
+    walk = Walk(flow, SourceBook())
     for layer in flow.layers.values():
         walk.collect_edge(layer)
         if isinstance(layer, Mask):
-            walk.collect_mask(layer)
+            walk.collect_terms(layer)
+            for axis in AXES:
+                walk.parts[layer.id, "read", axis] = walk.reads(layer, layer.aligns_to.weighted(axis), axis)
     return _assemble(flow, walk)
 
 
-class _Walk:
-    """Collects what enters each part of each mask, in (mode, amount) lists."""
+class Walk:
+    """Collects what enters each part of each mask, in (mode, amount) lists.
+
+    Parameters
+    ----------
+    flow : Flow
+        A checked flow.
+    book : SourceBook
+        Hands out the modes.
+    """
 
     def __init__(self, flow: Flow, book: SourceBook) -> None:
         self.flow = flow
         self.book = book
         self.parts: dict[tuple[str, PartName, Axis], Amounts] = defaultdict(list)
 
-    def collect_mask(self, mask: Mask) -> None:
+    def collect_terms(self, mask: Mask) -> None:
+        """Collect the mask's own and its tool's terms under the parts that they enter."""
         for tool, name, term in self.flow.terms_of(mask):
             for axis, mode, amount in self._term(mask, tool, name, term):
                 self.parts[mask.id, term.enters, axis].append((mode, amount))
-        for axis in AXES:
-            for reading, weight in mask.aligns_to.weighted(axis):
-                for label, size in self._read(mask, reading):
-                    amounts = self._shift(label, mask.id, size, axis, weight * _side(mask, "shift", axis))
-                    self.parts[mask.id, "read", axis] += amounts
+
+    def reads(self, mask: Mask, weighted: tuple[tuple[Reading, float], ...], axis: Axis) -> Amounts:
+        """Return what reading these references along an axis adds to the mask's frame."""
+        found: Amounts = []
+        for reading, weight in weighted:
+            for label, size in self._read(mask, reading):
+                found += self._shift(label, mask.id, size, axis, weight * _side(mask, "shift", axis))
+        return found
 
     def collect_edge(self, layer: Mask | SelfAligned) -> None:
+        """Collect the layer's edge errors."""
         cd = layer.cd if isinstance(layer, Mask) else None
         for label, size, share in (("CD", cd, 0.5), ("edge", layer.edge, 1.0)):
             if size is None:
@@ -191,7 +206,7 @@ def _side(mask: Mask, shape: Shape, axis: Axis) -> int:
     return -1 if mask.side == "back" and mirrored else 1
 
 
-def _assemble(flow: Flow, walk: _Walk) -> Placement:
+def _assemble(flow: Flow, walk: Walk) -> Placement:
     tables, places = walk.book.tables()
     index = {WAFER: 0} | {name: i + 1 for i, name in enumerate(flow.layers)}
     patterns, edges = {}, {}

@@ -11,6 +11,7 @@ from flowplan.errors import Diagnostic, Path, nearest
 from flowplan.model.base import AXES, WAFER
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import MOST_FIELDS, too_many_fields, whole_fields
+from flowplan.model.masks import Mask, References
 from flowplan.model.terms import KINDS, Term
 
 Rule = Callable[[Flow], Iterator[Diagnostic]]
@@ -72,18 +73,24 @@ def _tools_exist(flow: Flow) -> Iterator[Diagnostic]:
             yield Diagnostic("FP309", message, "", ("tools", name), severity="warning")
 
 
+def _every_reference(mask: Mask) -> Iterator[tuple[Path, References]]:
+    """Yield what a mask reads and what it may read, each with its place in the mask."""
+    yield ("aligns_to",), mask.aligns_to
+    for k, candidate in enumerate(mask.may_align_to or ()):
+        yield ("may_align_to", k), candidate
+
+
 def _references_are_earlier(flow: Flow) -> Iterator[Diagnostic]:
     everything = [name for name, _ in _every_id(flow)]
     order = {name: i for i, name in enumerate(flow.layers)}
     for i, mask in enumerate(flow.masks):
-        for axis in AXES:
-            for k, reading in enumerate(mask.aligns_to.on(axis)):
-                path: Path = ("masks", i, "aligns_to", axis, k, "mask")
-                known = order.get(reading.mask)
-                if reading.mask == WAFER or (known is not None and known < order.get(mask.id, 0)):
-                    continue
-                earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
-                yield _bad_reference(mask.id, reading.mask, everything, earlier, flow, path)
+        earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
+        for where, references in _every_reference(mask):
+            for axis in AXES:
+                for k, reading in enumerate(references.on(axis)):
+                    if reading.mask not in earlier:
+                        path: Path = ("masks", i, *where, axis, k, "mask")
+                        yield _bad_reference(mask.id, reading.mask, everything, earlier, flow, path)
 
 
 def _bad_reference(
@@ -201,8 +208,11 @@ def _sizes_are_given(flow: Flow) -> Iterator[Diagnostic]:
         bare = [r for r in readings if r.alignment is None]
         to_wafer += any(r.mask == WAFER for r in readings)
         path: Path = ("masks", i, "aligns_to")
-        if tool.alignment is None and any(r.mask != WAFER for r in bare):
-            yield _no_size(f"tools.{mask.tool}.alignment", f"{mask.id!r} reads marks", path)
+        if tool.alignment is None:
+            for where, references in _every_reference(mask):
+                if any(r.alignment is None and r.mask != WAFER for a in AXES for r in references.on(a)):
+                    what = f"{mask.id!r} {'reads' if where == ('aligns_to',) else 'may read'} marks"
+                    yield _no_size(f"tools.{mask.tool}.alignment", what, ("masks", i, *where))
         if tool.wafer_alignment is None and to_wafer > 1 and any(r.mask == WAFER for r in bare):
             yield _no_size(f"tools.{mask.tool}.wafer_alignment", f"{mask.id!r} aligns to the wafer", path)
 

@@ -100,6 +100,11 @@ class Mask(Described):
     id: Id = Field(description="The name used by everything that refers to this mask.")
     tool: Id = Field(description="The tool that exposes it, a key of `tools`.")
     aligns_to: References = Field(description="Earlier masks whose marks are read, or `wafer`.")
+    may_align_to: tuple[References, ...] | None = Field(
+        None,
+        min_length=1,
+        description="Other references that `propose` may choose for this mask, each in a form of `aligns_to`.",
+    )
     cd: Size | None = Field(
         None, description="Variation of the full width (critical dimension); each edge moves by half."
     )
