@@ -77,14 +77,15 @@ def read_yaml(text: str, file: str) -> tuple[Any, Places]:
         For text that is not one plain YAML document, with every problem that can be named.
     """
     builder = _Builder(Places(file))
-    root = _compose(text, file)
+    root = compose(text, file)
     data = None if root is None else builder.value(root, (), 0)
     if builder.problems:
         raise FlowError(builder.problems)
     return data, builder.places
 
 
-def _compose(text: str, file: str) -> Any:
+def compose(text: str, file: str) -> Any:
+    """Return the tree of nodes of a YAML text, each with its marks; see `read_yaml`."""
     from ruamel.yaml import YAML
     from ruamel.yaml.error import MarkedYAMLError, YAMLError, YAMLStreamError
 
