@@ -1,0 +1,231 @@
+"""What a pair can reach at best while some masks are still free: shortest ways, all pairs at once.
+
+In process order the place of a mask against everything earlier follows from its options alone:
+
+    frame of l against frame of e:   min over options (own + reading + marks of r against frame of e)
+    marks of e against frame of l:   min over options (own + reading + marks of e against marks of r)
+
+What enters at one place alone cannot be cancelled, so its variances, bounds and linear sums add up
+along a way and the smallest over the options is a true lower bound; it is exact once the way is
+decided. Offsets and shared sources are signed, so the range of each is carried along, and the part of
+the range nearest to 0 counts. An average of references lies on several ways at once: their parts
+have one sign unless earlier averages mix them, and then only what is certain is counted.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from flowplan.engine.propose.atoms import BOUND, LINEAR, VARIANCE, AxisAtoms, Parts
+from flowplan.engine.propose.exact import log_chance, settled, tails
+from flowplan.engine.sources import FloatArray, IntArray
+
+#: Sites at which margins are bounded; a few are enough, the exact values see all.
+_SITES = 4
+
+
+@dataclass(slots=True)
+class _Tables:
+    """Sizes and signed ranges of every two masks while the masks are walked through.
+
+    Attributes
+    ----------
+    to_frame : ndarray, shape (n_nodes, n_masks, n_masks, n_sizes)
+        Marks of the first against the frame of the second.
+    to_marks : ndarray, same shape
+        Marks of the first against the marks of the second.
+    low_frame, high_frame, low_marks, high_marks : ndarray, shape (n_nodes, n_masks, n_masks, n_signed)
+        The same for signed amounts, as ranges.
+    """
+
+    to_frame: FloatArray
+    to_marks: FloatArray
+    low_frame: FloatArray
+    high_frame: FloatArray
+    low_marks: FloatArray
+    high_marks: FloatArray
+
+    @classmethod
+    def empty(cls, nodes: int, masks: int, sizes: int, signed: int) -> "_Tables":
+        a, b = np.zeros((2, nodes, masks, masks, sizes))
+        return cls(a, b, *np.zeros((4, nodes, masks, masks, signed)))
+
+
+class AxisBounds:
+    """Bounds on one axis.
+
+    Parameters
+    ----------
+    axis : AxisAtoms
+        One axis of the flow.
+    as_yield : bool
+        Whether log(1 - fail probability) is bounded instead of the margin.
+    """
+
+    def __init__(self, axis: AxisAtoms, *, as_yield: bool) -> None:
+        self.axis, self.as_yield = axis, as_yield
+        self.sites = np.arange(axis.n_sites) if as_yield else _spread(axis.n_sites)
+        self.kinds = (VARIANCE, BOUND, LINEAR) if axis.basis == "linear" else (VARIANCE, BOUND)
+        self.power = np.tile([2 if kind == VARIANCE else 1 for kind in self.kinds], len(self.sites))
+        self.layer, self.pattern, self.marks = (self._flat(p) for p in (axis.layer, axis.pattern, axis.marks))
+        self.reads = self._flat(axis.reads.parts)
+        every = (self.layer, self.pattern, self.marks, self.reads)
+        self.is_signed = any(parts.signed.any() for parts in every)
+        self.n_signed = self.layer.signed.shape[-1] if self.is_signed else 0
+        averaged = (axis.reads.weights[..., 1:] != 0).any(axis=(1, 2)) if axis.reads.masks.shape[2] > 1 else None
+        self.averaged = np.zeros(axis.n_masks, dtype=bool) if averaged is None else averaged
+        rows = axis.rows
+        self.late, self.early = np.maximum(rows.first, rows.second), np.minimum(rows.first, rows.second)
+        self.of_mask = [np.flatnonzero((self.late == i) & (self.early != i)) for i in range(axis.n_masks)]
+
+    @property
+    def is_loose(self) -> bool:
+        """Whether a decided way is still only bounded, not exact."""
+        return self.as_yield or bool(self.averaged.any())
+
+    @property
+    def floats_per_node(self) -> int:
+        """How much one node takes in memory."""
+        n, width = self.axis.n_masks, int(self.axis.reads.count.max())
+        per_way = len(self.power) + 2 * self.n_signed
+        return 2 * n * n * per_way + len(self.late) * width * (per_way + 8 * len(self.sites))
+
+    def _flat(self, parts: Parts) -> Parts:
+        """Keep the sizes and sites that count and lay them side by side."""
+        sizes = parts.sizes[..., self.sites, :][..., list(self.kinds)]
+        signed = parts.signed[..., self.sites, :]
+        lead = sizes.shape[:-2]
+        return Parts(sizes.reshape(*lead, -1), signed.reshape(*lead, -1))
+
+    def values(self, allowed: FloatArray) -> FloatArray:
+        """Return what every pair reaches at best with each option of its later mask.
+
+        Parameters
+        ----------
+        allowed : ndarray of bool, shape (n_nodes, n_masks, n_options)
+            The options left to each mask.
+
+        Returns
+        -------
+        ndarray, shape (n_nodes, n_rows, n_options)
+            Upper bounds of margins [nm] or of logarithms; -inf for options that are not allowed.
+        """
+        sizes, low, high = self._walk(allowed)
+        sizes = sizes + (self.pattern.sizes[self.late] + self.pattern.sizes[self.early])[:, None]
+        same = self.late == self.early
+        sizes[:, same] = 0.0
+        if self.is_signed:
+            own = (self.pattern.signed[self.late] - self.pattern.signed[self.early])[:, None]
+            low, high = low + own, high + own
+            low[:, same] = high[:, same] = 0.0
+            back = self.axis.rows.first > self.axis.rows.second
+            low[:, back], high[:, back] = -high[:, back], -low[:, back]
+        found = self._judge(sizes, low, high)
+        ok = allowed[:, self.late]
+        return np.where(ok, found, -np.inf)
+
+    def _walk(self, allowed: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """Fill the tables in process order; return the rows' overlays by option of the later mask."""
+        nodes, n, width = allowed.shape
+        t = _Tables.empty(nodes, n, len(self.power), self.n_signed)
+        least = self._least_own(allowed)
+        sizes = np.zeros((nodes, len(self.late), width, len(self.power)))
+        low, high = np.zeros((2, nodes, len(self.late), width, self.n_signed))
+        for i in range(n):
+            count = int(self.axis.reads.count[i])
+            if i:
+                ok = allowed[:, i, :count, None, None]
+                to_frame, to_marks = self._ways(t, least, i, count)
+                rows = self.of_mask[i]
+                sizes[:, rows, :count] = to_frame[:, :, self.early[rows]].swapaxes(1, 2)
+                t.to_frame[:, i, :i] = np.where(ok, to_frame, np.inf).min(axis=1) + self.marks.sizes[i]
+                t.to_frame[:, :i, i] = np.where(ok, to_marks, np.inf).min(axis=1)
+                t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = t.to_frame[:, :i, i] + self.marks.sizes[i]
+                if self.is_signed:
+                    self._signed(t, ok, i, count, rows, low, high)
+            t.to_frame[:, i, i] = self.marks.sizes[i]
+            if self.is_signed:
+                t.low_frame[:, i, i] = t.high_frame[:, i, i] = self.marks.signed[i]
+        return sizes, low, high
+
+    def _least_own(self, allowed: FloatArray) -> FloatArray:
+        """Least that each mask and its marks add wherever they take part, shape (n_nodes, n_masks, n_sizes)."""
+        reads = np.where(allowed[..., None], self.reads.sizes, np.inf).min(axis=2)
+        return np.asarray(self.layer.sizes + self.marks.sizes + reads)
+
+    def _ways(self, t: _Tables, least: FloatArray, i: int, count: int) -> tuple[FloatArray, FloatArray]:
+        """Sizes of mask i against the frames and the marks of all earlier ones, by option."""
+        masks, weights = self.axis.reads.masks[i, :count], self.axis.reads.weights[i, :count]
+        own = (self.layer.sizes[i] + self.reads.sizes[i, :count])[:, None]
+        if not self.averaged[i]:
+            one = masks[:, 0]
+            return t.to_frame[:, one, :i] + own, t.to_marks[:, one, :i] + own
+        scale = weights[..., None] ** self.power
+        if self.averaged[:i].any():
+            later = masks[..., None] > np.arange(i)
+            certain = np.einsum("okq,bokq,oke->boeq", scale, least[:, masks], later)
+            single = (weights > 0).sum(axis=1) == 1
+            first = masks[:, 0]
+            to_frame = np.where(single[:, None, None], t.to_frame[:, first, :i], certain)
+            to_marks = np.where(single[:, None, None], t.to_marks[:, first, :i], certain)
+            return to_frame + own, to_marks + own
+        to_frame = np.einsum("okq,bokeq->boeq", scale, t.to_frame[:, masks, :i])
+        to_marks = np.einsum("okq,bokeq->boeq", scale, t.to_marks[:, masks, :i])
+        return to_frame + own, to_marks + own
+
+    def _signed(
+        self, t: _Tables, ok: FloatArray, i: int, count: int, rows: IntArray, low: FloatArray, high: FloatArray
+    ) -> None:
+        """Carry the ranges of offsets and shared sources on to mask i."""
+        masks, weights = self.axis.reads.masks[i, :count], self.axis.reads.weights[i, :count]
+        own = (self.layer.signed[i] + self.reads.signed[i, :count])[:, None]
+        ends = []
+        for frame, marks in ((t.low_frame, t.low_marks), (t.high_frame, t.high_marks)):
+            ends.append(np.einsum("ok,bokeq->boeq", weights, frame[:, masks, :i]) + own)
+            ends.append(np.einsum("ok,bokeq->boeq", weights, marks[:, masks, :i]) + own)
+        low_frame, low_marks, high_frame, high_marks = ends
+        low[:, rows, :count] = low_frame[:, :, self.early[rows]].swapaxes(1, 2)
+        high[:, rows, :count] = high_frame[:, :, self.early[rows]].swapaxes(1, 2)
+        mark = self.marks.signed[i]
+        t.low_frame[:, i, :i] = np.where(ok, low_frame, np.inf).min(axis=1) + mark
+        t.high_frame[:, i, :i] = np.where(ok, high_frame, -np.inf).max(axis=1) + mark
+        lowest = np.where(ok, low_marks, np.inf).min(axis=1)
+        highest = np.where(ok, high_marks, -np.inf).max(axis=1)
+        t.low_frame[:, :i, i], t.high_frame[:, :i, i] = -highest, -lowest
+        t.low_marks[:, i, :i], t.high_marks[:, i, :i] = lowest + mark, highest + mark
+        t.low_marks[:, :i, i], t.high_marks[:, :i, i] = -highest - mark, -lowest - mark
+
+    def _judge(self, sizes: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+        """Turn least sizes and ranges into upper bounds of what a pair gets."""
+        axis, n_sites = self.axis, len(self.sites)
+        full = np.zeros((*sizes.shape[:-1], n_sites, 3))
+        full[..., list(self.kinds)] = sizes.reshape(*sizes.shape[:-1], n_sites, -1)
+        full += axis.rows.edges[:, None, None]
+        offset_low = offset_high = np.zeros(full.shape[:-1])
+        if self.is_signed:
+            low = low.reshape(*low.shape[:-1], n_sites, -1)
+            high = high.reshape(*high.shape[:-1], n_sites, -1)
+            nearest = np.maximum(0.0, np.maximum(low, -high))
+            full += axis.shared_sizes(nearest[..., 1:])
+            offset_low, offset_high = low[..., 0], high[..., 0]
+        room, scale = axis.rows.room[:, None, None], axis.rows.scale[:, None, None]
+        if self.as_yield:
+            return self._chances(full, offset_low, offset_high)
+        need = axis.need(full)
+        offset = np.maximum(0.0, np.maximum(offset_low, -offset_high))
+        return settled(room - offset - need, scale + offset + need).min(axis=-1)
+
+    def _chances(self, full: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+        """The least chance of failure at any site; short of room, spread can bring it down to a half."""
+        sigma, bound = np.sqrt(full[..., VARIANCE]), full[..., BOUND]
+        room, scale = self.axis.rows.room[:, None, None], self.axis.rows.scale[:, None, None]
+        failure = np.zeros_like(sigma)
+        for offset in (high, -low):
+            left = settled(room + offset - bound, scale + np.abs(offset) + bound)
+            failure += np.where(left < 0, 0.5, tails(left, sigma))
+        return log_chance(np.minimum(failure.min(axis=-1), 1.0))
+
+
+def _spread(n_sites: int) -> IntArray:
+    """A few sites, spread evenly over the rim."""
+    return np.unique(np.linspace(0, n_sites - 1, min(_SITES, n_sites)).round().astype(np.int64))
