@@ -19,6 +19,7 @@ import math
 from collections import defaultdict
 from collections.abc import Iterator
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -32,6 +33,7 @@ from flowplan.engine.sources import (
 from flowplan.model.base import AXES, WAFER, Axis
 from flowplan.model.flow import Flow
 from flowplan.model.masks import Mask, Reading, SelfAligned
+from flowplan.model.paths import Keys, layer_keys, reading_keys, term_keys
 from flowplan.model.terms import SHAPE_PER_AXIS, Kind, Shape, SizeParts, Term, quoted
 
 Amounts = list[tuple[int, float]]
@@ -50,6 +52,8 @@ class Placement:
         Row of each layer; the wafer has a row of zeros.
     sources : tuple of Source
         Every independent scalar.
+    keys : tuple of hashable
+        What tells each source from the others; (key, (place, kind, axis)) when placed apart.
     modes : dict of axis to ModeTable
         What each column means.
     pattern, edge : dict of axis to ndarray, shape (n_layers + 1, n_modes)
@@ -58,6 +62,7 @@ class Placement:
 
     index: dict[str, int]
     sources: tuple[Source, ...]
+    keys: tuple[Any, ...]
     modes: dict[Axis, ModeTable]
     pattern: dict[Axis, FloatArray]
     edge: dict[Axis, FloatArray]
@@ -78,20 +83,23 @@ class Placement:
         return difference
 
 
-def place(flow: Flow) -> Placement:
+def place(flow: Flow, *, apart: bool = False) -> Placement:
     """Place every layer of a flow.
 
     Parameters
     ----------
     flow : Flow
         A checked flow.
+    apart : bool
+        Keep amounts apart by the place in the file that quotes them: one physical error with sizes in
+        several places then counts as a source for each.
 
     Returns
     -------
     Placement
         Amounts of every source in every layer.
     """
-    walk = Walk(flow, SourceBook())
+    walk = Walk(flow, SourceBook(apart))
     for layer in flow.layers.values():
         walk.collect_edge(layer)
         if isinstance(layer, Mask):
@@ -127,41 +135,50 @@ class Walk:
         """Return what reading these references along an axis adds to the mask's frame."""
         found: Amounts = []
         for reading, weight in weighted:
-            for label, size in self._read(mask, reading):
-                found += self._shift(label, mask.id, size, axis, weight * _side(mask, "shift", axis))
+            factor = weight * _side(mask, "shift", axis)
+            for label, size, place in self._read(mask, reading, axis):
+                found += self._shift(label, mask.id, size, axis, factor, place)
         return found
 
     def collect_edge(self, layer: Mask | SelfAligned) -> None:
         """Collect the layer's edge errors."""
         cd = layer.cd if isinstance(layer, Mask) else None
-        for label, size, share in (("CD", cd, 0.5), ("edge", layer.edge, 1.0)):
+        for label, name, size, share in (("CD", "cd", cd, 0.5), ("edge", "edge", layer.edge, 1.0)):
             if size is None:
                 continue
+            place = layer_keys(layer, name)
             for axis in AXES:
-                self.parts[layer.id, "edge", axis] += self._shift(label, layer.id, size, axis, share)
+                amounts = self._shift(label, layer.id, size, axis, share, place)
+                self.parts[layer.id, "edge", axis] += amounts
 
-    def _read(self, mask: Mask, reading: Reading) -> Iterator[tuple[str, SizeParts]]:
+    def _read(self, mask: Mask, reading: Reading, axis: Axis) -> Iterator[tuple[str, SizeParts, Keys]]:
         tool = self.flow.tools[mask.tool]
         to_wafer = reading.mask == WAFER
-        size = reading.alignment or (tool.wafer_alignment if to_wafer else tool.alignment)
+        size = tool.wafer_alignment if to_wafer else tool.alignment
+        place: Keys = ("tools", mask.tool, "wafer_alignment" if to_wafer else "alignment")
+        if reading.alignment is not None:
+            size, place = reading.alignment, reading_keys(mask, reading, axis)
         if size is not None:
-            yield f"alignment to {reading.mask}", size
+            yield f"alignment to {reading.mask}", size, place
         marks = self.flow.layers.get(reading.mask)
         if isinstance(marks, Mask) and marks.mark_reading is not None:
-            yield f"mark reading of {marks.id}", marks.mark_reading
+            yield f"mark reading of {marks.id}", marks.mark_reading, layer_keys(marks, "mark_reading")
 
-    def _shift(self, label: str, of: str, size: SizeParts, axis: Axis, factor: float) -> Amounts:
+    def _shift(
+        self, label: str, of: str, size: SizeParts, axis: Axis, factor: float, place: Keys
+    ) -> Amounts:
         """Amounts of an error of one layer on one axis that nothing else shares."""
         found: Amounts = []
         for kind, per_axis in size.parts():
             value = per_axis.on(axis).in_base(self.flow.unit)
             if value:
                 source = Source(label, of, kind, "shift", value)
-                index = self.book.source((of, label, kind, axis), source)
+                index = self.book.source((of, label, kind, axis), source, (place, kind, axis))
                 found.append((self.book.mode(axis, index, 0), factor * value))
         return found
 
     def _term(self, mask: Mask, tool: str | None, name: str, term: Term) -> Iterator[tuple[Axis, int, float]]:
+        place = term_keys(mask, tool, name)
         for kind, per_axis in term.parts():
             for axis in AXES:
                 act = action(term.shape, term.over, axis)
@@ -173,7 +190,7 @@ class Walk:
                 size = quoted(per_axis, scalar).in_base(self.flow.unit)
                 for key, label, of, share in _shares(mask, tool, name, term, kind):
                     source = Source(label, of, kind, term.shape, size)
-                    index = self.book.source((*key, kind, scalar), source)
+                    index = self.book.source((*key, kind, scalar), source, (place, kind, axis))
                     amount = sign * _side(mask, term.shape, axis) * share * value
                     yield axis, self.book.mode(axis, index, basis), amount
 
@@ -234,4 +251,4 @@ def _assemble(flow: Flow, walk: Walk) -> Placement:
             add(device[i], name, "pattern")
             add(marks[i], name, "marks")
         patterns[axis], edges[axis] = device, edge
-    return Placement(index, tuple(walk.book.sources), tables, patterns, edges)
+    return Placement(index, tuple(walk.book.sources), walk.book.keys, tables, patterns, edges)

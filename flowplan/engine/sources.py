@@ -130,16 +130,27 @@ class ModeTable:
 
 @dataclass(slots=True)
 class SourceBook:
-    """Hands out sources and modes while a flow is walked through; equal keys are one source."""
+    """Hands out sources and modes while a flow is walked through; equal keys are one source.
 
+    With `apart`, the place in the file that quotes a size is part of the key.
+    """
+
+    apart: bool = False
     sources: list[Source] = field(default_factory=list)
     _by_key: dict[Hashable, int] = field(default_factory=dict)
     _modes: dict[Axis, dict[tuple[int, int], int]] = field(
         default_factory=lambda: {axis: {} for axis in AXES}
     )
 
-    def source(self, key: Hashable, source: Source) -> int:
+    @property
+    def keys(self) -> tuple[Hashable, ...]:
+        """The key of every source."""
+        return tuple(self._by_key)
+
+    def source(self, key: Hashable, source: Source, place: Hashable) -> int:
         """Return the index of the source with this key; the largest size quoted for it counts."""
+        if self.apart:
+            key = key, place
         index = self._by_key.setdefault(key, len(self.sources))
         if index == len(self.sources):
             self.sources.append(source)

@@ -5,14 +5,20 @@ so it goes to the engine like any other.
 """
 
 from collections.abc import Iterable, Mapping
+from typing import TypeVar
 
 from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.flow import Flow
 from flowplan.model.masks import Follows, Mask, Reading, References, SelfAligned, Tones
 from flowplan.model.pairs import AnyPair
+from flowplan.model.paths import Keys, Quoted, reading_keys
+from flowplan.model.terms import SizeParts
+from flowplan.model.tools import Tool
 from flowplan.units import Quantity
 
 Readings = tuple[Reading, ...]
+_AnySize = TypeVar("_AnySize", bound=SizeParts)
+_Holder = TypeVar("_Holder", Tool, Mask, SelfAligned)
 
 
 def with_references(flow: Flow, choices: Mapping[tuple[str, Axis], Readings]) -> Flow:
@@ -113,3 +119,74 @@ def with_drawn(flow: Flow, name: str, axis: Axis, drawn_nm: float) -> Flow:
         return pair.model_copy(update={key: PerAxis(**values)})
 
     return flow.model_copy(update={"pairs": tuple(changed(pair) for pair in flow.pairs)})
+
+
+def with_size(flow: Flow, quoted: Quoted, size: Quantity) -> Flow:
+    """Return the flow with another size at one place.
+
+    Parameters
+    ----------
+    flow : Flow
+        A checked flow.
+    quoted : Quoted
+        The place, one of `quoted_sizes(flow)`; a number that serves both axes changes on both.
+    size : Quantity
+        The new size.
+
+    Returns
+    -------
+    Flow
+        The changed flow.
+
+    Raises
+    ------
+    ValueError
+        When the size is negative or measures something else than the old one.
+    """
+    if not size.value >= 0 or size.dimension != quoted.size.dimension:
+        msg = f"{size} cannot be the size of {quoted.path}"
+        raise ValueError(msg)
+    group, owner = quoted.keys[:2]
+    if group == "tools":
+        return flow.model_copy(
+            update={"tools": flow.tools | {owner: _in_holder(flow.tools[owner], quoted, size)}}
+        )
+    if group == "masks":
+        masks = tuple(_in_mask(m, quoted, size) if m.id == owner else m for m in flow.masks)
+        return flow.model_copy(update={"masks": masks})
+    features = tuple(_in_holder(f, quoted, size) if f.id == owner else f for f in flow.self_aligned)
+    return flow.model_copy(update={"self_aligned": features})
+
+
+def _in_holder(holder: _Holder, quoted: Quoted, size: Quantity) -> _Holder:
+    name = quoted.keys[2]
+    old = getattr(holder, name)
+    if name == "terms":
+        term = quoted.keys[3]
+        new = old | {term: _resized(old[term], quoted, size)}
+    else:
+        new = _resized(old, quoted, size)
+    return holder.model_copy(update={name: new})
+
+
+def _in_mask(mask: Mask, quoted: Quoted, size: Quantity) -> Mask:
+    if quoted.keys[2] != "aligns_to":
+        return _in_holder(mask, quoted, size)
+    per_axis = {
+        axis: tuple(_in_reading(mask, reading, axis, quoted, size) for reading in mask.aligns_to.on(axis))
+        for axis in AXES
+    }
+    return mask.model_copy(update={"aligns_to": References.model_construct(**per_axis)})
+
+
+def _in_reading(mask: Mask, reading: Reading, axis: Axis, quoted: Quoted, size: Quantity) -> Reading:
+    keys: Keys = reading_keys(mask, reading, axis)
+    if keys != quoted.keys or reading.alignment is None:
+        return reading
+    return reading.model_copy(update={"alignment": _resized(reading.alignment, quoted, size)})
+
+
+def _resized(old: _AnySize, quoted: Quoted, size: Quantity) -> _AnySize:
+    before: PerAxis = getattr(old, quoted.kind)
+    after = {axis: size if axis in quoted.axes else before.on(axis) for axis in AXES}
+    return old.model_copy(update={quoted.kind: PerAxis.model_construct(**after)})
