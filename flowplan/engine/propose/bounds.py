@@ -22,6 +22,8 @@ from flowplan.engine.sources import FloatArray, IntArray
 
 #: Sites at which margins are bounded; a few are enough, the exact values see all.
 _SITES = 4
+#: Ways whose lengths differ by less than this share are equally long.
+_NOISE = 1e-12
 
 
 @dataclass(slots=True)
@@ -69,9 +71,9 @@ class AxisBounds:
         self.power = np.tile([2 if kind == VARIANCE else 1 for kind in self.kinds], len(self.sites))
         self.layer, self.pattern, self.marks = (self._flat(p) for p in (axis.layer, axis.pattern, axis.marks))
         self.reads = self._flat(axis.reads.parts)
-        every = (self.layer, self.pattern, self.marks, self.reads)
-        self.is_signed = any(parts.signed.any() for parts in every)
-        self.n_signed = self.layer.signed.shape[-1] if self.is_signed else 0
+        carried = (self.layer, self.marks, self.reads)
+        self.is_signed = any(parts.signed.any() for parts in carried)
+        self.n_signed = self.layer.signed.shape[-1]
         averaged = (axis.reads.weights[..., 1:] != 0).any(axis=(1, 2)) if axis.reads.masks.shape[2] > 1 else None
         self.averaged = np.zeros(axis.n_masks, dtype=bool) if averaged is None else averaged
         rows = axis.rows
@@ -110,27 +112,88 @@ class AxisBounds:
         ndarray, shape (n_nodes, n_rows, n_options)
             Upper bounds of margins [nm] or of logarithms; -inf for options that are not allowed.
         """
-        sizes, low, high = self._walk(allowed)
+        _, sizes, low, high = self._walk(allowed)
         sizes = sizes + (self.pattern.sizes[self.late] + self.pattern.sizes[self.early])[:, None]
         same = self.late == self.early
         sizes[:, same] = 0.0
-        if self.is_signed:
-            own = (self.pattern.signed[self.late] - self.pattern.signed[self.early])[:, None]
-            low, high = low + own, high + own
-            low[:, same] = high[:, same] = 0.0
-            back = self.axis.rows.first > self.axis.rows.second
-            low[:, back], high[:, back] = -high[:, back], -low[:, back]
+        own = (self.pattern.signed[self.late] - self.pattern.signed[self.early])[:, None]
+        low, high = low + own, high + own
+        low[:, same] = high[:, same] = 0.0
+        back = self.axis.rows.first > self.axis.rows.second
+        low[:, back], high[:, back] = -high[:, back], -low[:, back]
         found = self._judge(sizes, low, high)
         ok = allowed[:, self.late]
         return np.where(ok, found, -np.inf)
 
-    def _walk(self, allowed: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    def departures(self, allowed: FloatArray, plans: IntArray, rows: IntArray) -> list[int | None]:
+        """Return for each node the first mask at which a pair's best way leaves the plan.
+
+        Parameters
+        ----------
+        allowed : ndarray of bool, shape (n_nodes, n_masks, n_options)
+            The options left to each mask.
+        plans : ndarray of int, shape (n_nodes, n_masks)
+            A plan of each node.
+        rows : ndarray of int, shape (n_nodes,)
+            One pair of each node.
+
+        Returns
+        -------
+        list of int or None
+            A mask with more than one option, or None where the way is decided.
+        """
+        tables = self._walk(allowed)[0]
+        nodes = zip(allowed, plans, rows, strict=True)
+        return [self._departure(tables, k, *node) for k, node in enumerate(nodes)]
+
+    def _departure(self, t: _Tables, node: int, allowed: FloatArray, plan: IntArray, row: int) -> int | None:
+        is_open = allowed.sum(axis=1) > 1
+        late, early = int(self.late[row]), int(self.early[row])
+        to_frame, undecided = True, None
+        while late != early:
+            option = int(plan[late])
+            if is_open[late]:
+                cost = self._costs(t.to_frame if to_frame else t.to_marks, node, late, early)
+                if undecided is not None or late != self.late[row]:
+                    cost = np.where(allowed[late], cost, np.inf)
+                    if cost[option] > cost.min() * (1 + _NOISE):
+                        return late
+                undecided = late if undecided is None else undecided
+            if self.axis.reads.weights[late, option, 1:].any():
+                return undecided if undecided is not None else self._ancestor(is_open, plan, late, early)
+            reference = int(self.axis.reads.masks[late, option, 0])
+            if to_frame and reference >= early:
+                late = reference
+                continue
+            late, early, to_frame = max(early, reference), min(early, reference), False
+        return undecided
+
+    def _costs(self, table: FloatArray, node: int, late: int, early: int) -> FloatArray:
+        """Sizes of a way by each option of its later mask, added up as a rough length."""
+        masks, weights = self.axis.reads.masks[late], self.axis.reads.weights[late]
+        ways = (weights[..., None] ** self.power * table[node, masks, early]).sum(axis=1)
+        return np.asarray((ways + self.reads.sizes[late]).sum(axis=1))
+
+    def _ancestor(self, is_open: FloatArray, plan: IntArray, *masks: int) -> int | None:
+        """Return the latest undecided mask from which one of these inherits."""
+        waiting, seen = list(masks), set[int]()
+        while waiting:
+            mask = waiting.pop()
+            if mask not in seen:
+                seen.add(mask)
+                used = self.axis.reads.weights[mask, plan[mask]] > 0
+                waiting += self.axis.reads.masks[mask, plan[mask]][used].tolist()
+        return max((m for m in seen if is_open[m]), default=None)
+
+    def _walk(self, allowed: FloatArray) -> tuple["_Tables", FloatArray, FloatArray, FloatArray]:
         """Fill the tables in process order; return the rows' overlays by option of the later mask."""
         nodes, n, width = allowed.shape
-        t = _Tables.empty(nodes, n, len(self.power), self.n_signed)
+        t = _Tables.empty(nodes, n, len(self.power), self.n_signed if self.is_signed else 0)
         least = self._least_own(allowed)
         sizes = np.zeros((nodes, len(self.late), width, len(self.power)))
-        low, high = np.zeros((2, nodes, len(self.late), width, self.n_signed))
+        low = high = np.zeros((nodes, len(self.late), width if self.is_signed else 1, self.n_signed))
+        if self.is_signed:
+            high = high.copy()
         for i in range(n):
             count = int(self.axis.reads.count[i])
             if i:
@@ -146,7 +209,7 @@ class AxisBounds:
             t.to_frame[:, i, i] = self.marks.sizes[i]
             if self.is_signed:
                 t.low_frame[:, i, i] = t.high_frame[:, i, i] = self.marks.signed[i]
-        return sizes, low, high
+        return t, sizes, low, high
 
     def _least_own(self, allowed: FloatArray) -> FloatArray:
         """Least that each mask and its marks add wherever they take part, shape (n_nodes, n_masks, n_sizes)."""
@@ -201,13 +264,11 @@ class AxisBounds:
         full = np.zeros((*sizes.shape[:-1], n_sites, 3))
         full[..., list(self.kinds)] = sizes.reshape(*sizes.shape[:-1], n_sites, -1)
         full += axis.rows.edges[:, None, None]
-        offset_low = offset_high = np.zeros(full.shape[:-1])
-        if self.is_signed:
-            low = low.reshape(*low.shape[:-1], n_sites, -1)
-            high = high.reshape(*high.shape[:-1], n_sites, -1)
-            nearest = np.maximum(0.0, np.maximum(low, -high))
-            full += axis.shared_sizes(nearest[..., 1:])
-            offset_low, offset_high = low[..., 0], high[..., 0]
+        low = low.reshape(*low.shape[:-1], n_sites, -1)
+        high = high.reshape(*high.shape[:-1], n_sites, -1)
+        nearest = np.maximum(0.0, np.maximum(low, -high))
+        full += axis.shared_sizes(nearest[..., 1:])
+        offset_low, offset_high = low[..., 0], high[..., 0]
         room, scale = axis.rows.room[:, None, None], axis.rows.scale[:, None, None]
         if self.as_yield:
             return self._chances(full, offset_low, offset_high)
