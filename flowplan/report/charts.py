@@ -1,0 +1,143 @@
+"""Geometry of the report's charts; the templates put it into SVG, so that text is escaped there."""
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from flowplan.engine.graph import Chain
+from flowplan.report.tree import cut
+
+_BOX_W, _BOX_H, _STEP = 148, 30, 66
+_LEFT, _MIDDLE, _RIGHT = 90, 210, 330
+_WIDTH = 420
+#: A box holds so many characters of an id.
+_FITS = 17
+#: A bar that runs past its end is cut at this share of its length.
+_MOST = 1.3
+
+
+@dataclass(frozen=True, slots=True)
+class Box:
+    """A layer in the drawing of a chain; x, y is its centre."""
+
+    x: int
+    y: int
+    text: str
+    full: str
+    kind: str
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """A hop, from the child up to its reference, with its label's place."""
+
+    x1: int
+    y1: int
+    x2: int
+    y2: int
+    label: str
+    label_x: int
+    label_y: int
+    anchor: str
+
+
+@dataclass(frozen=True, slots=True)
+class ChainDrawing:
+    """A chain as boxes and lines in a fixed width; the common reference stands at the top."""
+
+    width: int
+    height: int
+    box_width: int
+    box_height: int
+    boxes: tuple[Box, ...]
+    lines: tuple[Line, ...]
+
+
+def chain_drawing(chain: Chain, labels: Sequence[str]) -> ChainDrawing:
+    """Return the geometry of a chain.
+
+    Parameters
+    ----------
+    chain : Chain
+        The chain.
+    labels : sequence of str
+        One a hop, in the order of `Chain.hops`.
+
+    Returns
+    -------
+    ChainDrawing
+        The first layer's branch at the left, the second's at the right.
+    """
+    turn = chain.layers.index(chain.through)
+    up, down = chain.layers[:turn], chain.layers[turn + 1 :]
+    top = _BOX_H // 2 + 6
+    single = not up or not down
+    places = {chain.through: (_MIDDLE, top)}
+    for branch, x in ((up[::-1], _LEFT), (down, _RIGHT)):
+        for level, layer in enumerate(branch, start=1):
+            places[layer] = (_MIDDLE if single else x, top + level * _STEP)
+    ends = {chain.layers[0]: "end", chain.layers[-1]: "end"}
+    boxes = [
+        Box(x, y, cut(layer, _FITS), layer, "through" if layer == chain.through else ends.get(layer, "mid"))
+        for layer, (x, y) in places.items()
+    ]
+    lines = [
+        _line(places[child], places[ref], label)
+        for (child, ref), label in zip(chain.hops(), labels, strict=True)
+    ]
+    height = max(y for _, y in places.values()) + _BOX_H // 2 + 6
+    return ChainDrawing(_WIDTH, height, _BOX_W, _BOX_H, tuple(boxes), tuple(lines))
+
+
+def _line(child: tuple[int, int], reference: tuple[int, int], label: str) -> Line:
+    x1, y1 = child[0], child[1] - _BOX_H // 2
+    x2, y2 = reference[0], reference[1] + _BOX_H // 2
+    x2 += (x1 > x2) * 40 - (x1 < x2) * 40
+    right = x1 >= _MIDDLE
+    middle_x, middle_y = (x1 + x2) // 2, (y1 + y2) // 2
+    return Line(
+        x1, y1, x2, y2, label, middle_x + (10 if right else -10), middle_y + 4, "start" if right else "end"
+    )
+
+
+def bar(share: float, length: int) -> int:
+    """Return the length of a bar for a share of the whole, cut where it runs far past the end."""
+    if math.isnan(share):
+        return 0
+    return round(min(max(share, 0.0), _MOST) * length)
+
+
+@dataclass(frozen=True, slots=True)
+class Squares:
+    """The fields of one class on a wafer map: `path` draws a square at each grid place."""
+
+    level: int
+    path: str
+
+
+def squares(places: Sequence[tuple[int, int]], levels: Sequence[int]) -> tuple[Squares, ...]:
+    """Return fields grouped by class, neighbours in a row joined into one run.
+
+    Parameters
+    ----------
+    places : sequence of (int, int)
+        Column and row of each field, row by row, columns rising.
+    levels : sequence of int
+        The class of each field.
+
+    Returns
+    -------
+    tuple of Squares
+        By class. A run of n fields is a line of length n - 1 that a dash pattern of pitch 1 cuts
+        into n squares, so a map costs a few bytes a run.
+    """
+    paths: dict[int, list[str]] = {}
+    i = 0
+    while i < len(places):
+        column, row = places[i]
+        j = i + 1
+        while j < len(places) and levels[j] == levels[i] and places[j] == (column + j - i, row):
+            j += 1
+        paths.setdefault(levels[i], []).append(f"M{column} {row}h{j - i - 1}.1")
+        i = j
+    return tuple(Squares(level, "".join(paths[level])) for level in sorted(paths))
