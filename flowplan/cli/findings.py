@@ -61,12 +61,17 @@ def _finding_lines(finding: Diagnostic, lines: list[str], *, coloured: bool) -> 
     tint = "yellow" if word else "red"
     head = paint(printable(place), bold=True) + paint(word, fg=tint) + printable(finding.message)
     shown = [f"{head} {paint(f'[{finding.code}]', fg=tint)}"]
-    if finding.span and finding.span.line <= len(lines):
+    if finding.span and finding.span.line <= len(lines) and _is_text(lines[finding.span.line - 1]):
         text, caret = _excerpt(lines[finding.span.line - 1], finding.span)
-        shown += [f"    {text}", "    " + paint(caret, fg=tint)] if text.strip() else []
+        shown += [f"    {text}", "    " + paint(caret, fg=tint)]
     if finding.hint:
         shown.append(f"    hint: {printable(finding.hint)}")
     return shown
+
+
+def _is_text(line: str) -> bool:
+    """Whether a line is worth showing: something in it, and no control characters."""
+    return bool(line.strip()) and all(c.isprintable() or c == "\t" for c in line)
 
 
 def _excerpt(line: str, span: Span) -> tuple[str, str]:
