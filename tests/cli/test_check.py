@@ -158,7 +158,8 @@ def test_check_starts_without_the_heavy_parts(tmp_path, flow):
         "from flowplan.cli.main import app\n"
         "try: app(['check', sys.argv[1]], prog_name='flowplan')\n"
         "except SystemExit as end: assert end.code == 0\n"
-        "heavy = {'scipy', 'graphviz', 'pygraphviz', 'jinja2', 'rich'} & {m.partition('.')[0] for m in sys.modules}\n"
+        "loaded = {m.partition('.')[0] for m in sys.modules}\n"
+        "heavy = {'scipy', 'graphviz', 'pygraphviz', 'jinja2', 'rich'} & loaded\n"
         "sys.exit(f'imported {heavy}' if heavy else 0)\n"
     )
     done = subprocess.run(

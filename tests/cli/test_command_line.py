@@ -146,7 +146,8 @@ def test_json_stays_json_where_output_is_not_utf8(tmp_path, flow):
     text = (tmp_path / flow).read_text().replace("third", '"µ → 𝛔"')
     (tmp_path / "signs.yaml").write_text(text)
     done = subprocess.run(
-        [*FLOWPLAN, "margins", "signs.yaml", "--format", "json"], cwd=tmp_path, capture_output=True, check=True,
+        [*FLOWPLAN, "margins", "signs.yaml", "--format", "json"],
+        cwd=tmp_path, capture_output=True, check=True,
         env={**os.environ, "PYTHONIOENCODING": "ascii"},
     )  # fmt: skip
     assert json.loads(done.stdout)["margins"][2]["pair"] == "µ → 𝛔"

@@ -48,14 +48,14 @@ def test_one_axis_alone_names_only_its_references(run, file):
     lines = run("tree", file, "--axis", "y").stdout.splitlines()
     assert lines[1].endswith("along y")
     assert lines[4:] == [
-        "1  A        wafer",
-        "2  ├─ B     A",
-        "   │  S     B (self-aligned)",
-        "6  ├─ F     A",
-        "   ├─ T     A (self-aligned)",
-        "3  C        A",
-        "4  D        C 75 %, B 25 %",
-        "5  E        D (back side)",
+        "1  A      wafer",
+        "2  ├─ B   A",
+        "   │  S   B (self-aligned)",
+        "   ├─ T   A (self-aligned)",
+        "6  ├─ F   A",
+        "3  C      A",
+        "4  D      C 75 %, B 25 %",
+        "5  E      D (back side)",
     ]
 
 
