@@ -122,7 +122,7 @@ class Kernel:
             The sum [nm].
         """
         total = np.zeros((len(amounts), basis.shape[1]))
-        ends = np.append(self.table.starts[1:], self.table.size)
+        ends = np.append(self.table.starts, self.table.size)[1:]
         shaped = np.zeros(self.table.size, dtype=bool)
         for start, end in zip(self.table.starts, ends, strict=True):
             if weight[start] and self.table.basis[start:end].any():
