@@ -49,7 +49,7 @@ class Kernel:
         return np.asarray(np.add.reduceat(amounts, self.table.starts, axis=1))
 
     def sigma_by_source(self) -> FloatArray:
-        """Standard deviation per amount of each active source, shape (n_active,)."""
+        """Return the standard deviation per amount of each active source, shape (n_active,)."""
         return self.sigma[self.table.starts]
 
     def at_points(self, amounts: FloatArray, basis: FloatArray) -> FloatArray:
