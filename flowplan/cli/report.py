@@ -26,7 +26,8 @@ def report(name: str, output: str | None, *, strict: bool) -> None:
         page = render_report(result, progress=bar.step)
     write_output(target, page, flow=name)
     tell(f"wrote {target}")
-    tell(f"{verdict_line(result)}; worst: {printable(worst_line(result))}")
+    tell(verdict_line(result))
+    tell(f"worst: {printable(worst_line(result))}")
     if strict and result.counts["fail"]:
         raise typer.Exit(Status.FAILS)
 

@@ -61,7 +61,9 @@ def open_flow(name: str) -> Opened:
     from flowplan.files.reader import MOST_BYTES, parse_bytes, read_bytes
 
     if not name.strip():
-        raise UsageError([Diagnostic("FP602", "no flow file is named", "`flowplan new` writes a starter flow")])
+        raise UsageError(
+            [Diagnostic("FP602", "no flow file is named", "`flowplan new` writes a starter flow")]
+        )
     if name == STDIN:
         name, raw = "<stdin>", sys.stdin.buffer.read(MOST_BYTES + 1)
     else:

@@ -31,7 +31,7 @@ def test_it_shows_hops_what_cancels_sources_and_the_direct_reading(run, file):
     assert (result.exit_code, result.stderr) == (0, "")
     assert result.stdout.splitlines() == [
         "C on B, along x",
-        "lengths in nm, random at 3 sigma",
+        "lengths in nm: offset ± random at 3 sigma ± bounds",
         "",
         "Chain through A",
         "  B reads A  ± 32.3",
