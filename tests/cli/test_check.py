@@ -60,6 +60,12 @@ def test_a_tab_or_a_wide_sign_before_the_place_keeps_the_caret_in_line(run):
     assert len(caret) <= len(excerpt) + 1
 
 
+def test_line_ends_of_another_system_and_a_mark_at_the_start_do_not_move_the_place(run):
+    text = "\ufeffflow: Estuary\r\nwafr: 3\r\nmasks: []\r\n".encode()
+    lines = run("check", "-", stdin=text).stderr.splitlines()
+    assert lines[:3] == ["<stdin>:2:1: unknown key 'wafr' [FP201]", "    wafr: 3", "    ^"]
+
+
 def test_warnings_do_not_stop_the_work(run, tmp_path):
     text = "flow: Estuary\ntools: {stepper: {}, spare: {}}\nmasks:\n"
     text += "  - {id: A, tool: stepper, aligns_to: wafer}\n"

@@ -2,7 +2,6 @@
 
 import json
 import os
-import pty
 import re
 import subprocess
 import sys
@@ -11,28 +10,10 @@ from pathlib import Path
 import pytest
 
 import flowplan
+from tests.cli.terminal import FLOWPLAN, on_a_terminal
 
 COMMANDS = ["check", "margins", "chain", "tree", "report", "new", "schema"]
-FLOWPLAN = [sys.executable, "-m", "flowplan"]
 STYLE = re.compile(r"\x1b\[[0-9;]*m")
-
-
-def on_a_terminal(*arguments: str, cwd: Path, columns: int = 80, **environment: str) -> str:
-    """Return what a command prints on a terminal of some width."""
-    inside, outside = pty.openpty()
-    env = {**os.environ, "TERM": "xterm-256color", "COLUMNS": str(columns), **environment}
-    env.pop("NO_COLOR", None) if "NO_COLOR" not in environment else None
-    done = subprocess.Popen([*FLOWPLAN, *arguments], cwd=cwd, stdout=outside, stderr=outside, env=env)
-    os.close(outside)
-    text = b""
-    try:
-        while part := os.read(inside, 65536):
-            text += part
-    except OSError:  # the terminal is closed when the command ends
-        pass
-    os.close(inside)
-    assert done.wait() == 0
-    return text.decode().replace("\r\n", "\n")
 
 
 def test_flowplan_alone_says_what_to_do_next(run):
@@ -156,7 +137,7 @@ def test_json_stays_json_where_output_is_not_utf8(tmp_path, flow):
 def test_a_terminal_of_80_columns_is_never_overrun(tmp_path, flow):
     text = (tmp_path / flow).read_text().replace("third", "a name that is " + "very " * 12 + "long")
     (tmp_path / "long.yaml").write_text(text)
-    shown = on_a_terminal("margins", "long.yaml", cwd=tmp_path)
+    shown = on_a_terminal(*FLOWPLAN, "margins", "long.yaml", cwd=tmp_path)
     table = STYLE.sub("", shown).split("\n\n")[1].splitlines()
     assert len(table) > 5
     assert max(map(len, table)) <= 80
@@ -164,9 +145,9 @@ def test_a_terminal_of_80_columns_is_never_overrun(tmp_path, flow):
 
 
 def test_a_terminal_sees_verdicts_in_colour_and_in_words(tmp_path, flow):
-    shown = on_a_terminal("margins", flow, cwd=tmp_path)
+    shown = on_a_terminal(*FLOWPLAN, "margins", flow, cwd=tmp_path)
     assert "\x1b[1;31mfail" in shown
-    plain = on_a_terminal("margins", flow, cwd=tmp_path, NO_COLOR="1")
+    plain = on_a_terminal(*FLOWPLAN, "margins", flow, cwd=tmp_path, NO_COLOR="1")
     assert not re.search("\x1b\\[[0-9;]*3[0-7]m", plain)
     assert "fail" in plain
 
@@ -174,4 +155,4 @@ def test_a_terminal_sees_verdicts_in_colour_and_in_words(tmp_path, flow):
 def test_a_warning_on_a_terminal_is_in_colour(tmp_path, flow):
     text = (tmp_path / flow).read_text().replace("tools:", "tools:\n  spare: {}")
     (tmp_path / "spare.yaml").write_text(text)
-    assert "\x1b[33mwarning: " in on_a_terminal("check", "spare.yaml", cwd=tmp_path)
+    assert "\x1b[33mwarning: " in on_a_terminal(*FLOWPLAN, "check", "spare.yaml", cwd=tmp_path)

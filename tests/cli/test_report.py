@@ -6,6 +6,8 @@ from pathlib import Path
 
 import pytest
 
+from tests.cli.terminal import FLOWPLAN, on_a_terminal
+
 
 def test_it_says_where_it_wrote_and_how_the_flow_stands(run, flow):
     result = run("report", flow, "-o", "out.html")
@@ -102,6 +104,14 @@ def test_no_progress_is_drawn_in_a_pipe(tmp_path, flow):
     )
     assert "margins" not in done.stderr.partition("wrote")[0]
     assert "\x1b" not in done.stderr
+
+
+def test_progress_is_drawn_on_a_terminal_when_it_takes_long(tmp_path, flow):
+    shown = on_a_terminal(sys.executable, "-c", SLOW, flow, cwd=tmp_path)
+    assert "100%" in shown
+    assert shown.index("margins") < shown.index("wrote four.html")
+    quick = on_a_terminal(*FLOWPLAN, "check", flow, cwd=tmp_path)
+    assert "100%" not in quick
 
 
 #: The command line with a clock by which every step takes long.
