@@ -13,6 +13,8 @@ from flowplan.errors import Diagnostic, Span
 _LINE_END = re.compile(r"\r\n|[\n\r\x85\u2028\u2029]")
 _WIDTH = 74
 _BEFORE = 60
+#: A longer list helps nobody; mending these shows the next.
+_MOST_SHOWN = 200
 
 
 def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> None:
@@ -27,8 +29,11 @@ def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> 
     """
     lines = _LINE_END.split(source) if source is not None else []
     coloured = has_colour(sys.stderr)
-    for finding in findings:
+    found = tuple(findings)
+    for finding in found[:_MOST_SHOWN]:
         tell("\n".join(_finding_lines(finding, lines, coloured=coloured)))
+    if len(found) > _MOST_SHOWN:
+        tell(f"… and {len(found) - _MOST_SHOWN} more")
 
 
 def count_findings(findings: Iterable[Diagnostic]) -> str:

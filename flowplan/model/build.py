@@ -41,11 +41,13 @@ def build(data: object) -> tuple[Flow | None, tuple[Diagnostic, ...]]:
     try:
         return Flow.model_validate(data), ()
     except ValidationError as error:
-        found = {}
+        found: dict[tuple[Path, str], Diagnostic] = {}
         for detail in error.errors(include_url=False, include_input=False):
+            if len(found) == MOST_DIAGNOSTICS:
+                break
             diagnostic = _translate(detail, data)
-            found[(diagnostic.path, diagnostic.message)] = diagnostic
-        return None, tuple(found.values())[:MOST_DIAGNOSTICS]
+            found.setdefault((diagnostic.path, diagnostic.message), diagnostic)
+        return None, tuple(found.values())
 
 
 def follow(data: object, path: Path) -> object:
