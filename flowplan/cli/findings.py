@@ -59,7 +59,7 @@ def finding_record(finding: Diagnostic) -> dict[str, Any]:
 
 def _finding_lines(finding: Diagnostic, lines: list[str], *, coloured: bool) -> list[str]:
     def paint(text: str, **style: Any) -> str:
-        return typer.style(text, **style) if coloured else text
+        return typer.style(text, **style) if coloured and text else text
 
     place = f"{finding.span}: " if finding.span else "flowplan: "
     word = "warning: " if finding.severity == "warning" else ""
