@@ -1,17 +1,20 @@
 """The overlay error of every two layers, as one array, without an entry for each."""
 
-from itertools import pairwise
+from itertools import combinations_with_replacement
 
 import numpy as np
 
 from flowplan.engine.analysis import Engine
 from flowplan.engine.margin import margins_over_sites
-from flowplan.engine.parts import CHUNK
+from flowplan.engine.parts import Kernel
 from flowplan.engine.points import Sites, basis_at
 from flowplan.engine.residual import Residuals, Row
-from flowplan.engine.sources import FloatArray, IntArray
+from flowplan.engine.sources import FloatArray, IntArray, ModeTable
 from flowplan.model.base import Axis
 from flowplan.model.pairs import Overlay
+
+#: Layers taken together; neighbours inherit the same sources, so few modes differ within a block.
+_BLOCK = 16
 
 
 def overlay_matrix(engine: Engine, axis: Axis) -> FloatArray:
@@ -34,18 +37,26 @@ def overlay_matrix(engine: Engine, axis: Axis) -> FloatArray:
     Every part of the error is a convex function of the four coordinates of a site, so its largest
     value lies at a corner of their hull; `outer_sites` are enough.
     """
-    layers = tuple(engine.flow.layers)
-    first, second = np.triu_indices(len(layers), 1)
+    pattern = engine.placement.pattern[axis][1:]
     sites = outer_sites(engine.sites)
-    kernel = engine.view(axis).kernel
-    found = np.zeros((len(layers), len(layers)))
-    step = max(1, CHUNK // max(1, kernel.table.size, sites.n_points))
-    for low, high in pairwise([*range(0, len(first), step), len(first)]):
-        a, b = first[low:high], second[low:high]
-        res = _unjudged(engine, axis, a + 1, b + 1)
-        worst = -margins_over_sites(res, kernel, sites, engine.flow).min(axis=1)
-        found[a, b] = found[b, a] = worst
+    found = np.zeros((len(pattern), len(pattern)))
+    blocks = [np.arange(start, min(start + _BLOCK, len(pattern))) for start in range(0, len(pattern), _BLOCK)]
+    for rows, columns in combinations_with_replacement(blocks, 2):
+        modes = np.flatnonzero(np.ptp(pattern[np.union1d(rows, columns)], axis=0) > 0)
+        first, second = (part.reshape(-1) for part in np.meshgrid(rows, columns, indexing="ij"))
+        overlay = engine.placement.overlay(axis, list(first + 1), list(second + 1), modes)
+        kernel = narrowed(engine.view(axis).kernel, modes)
+        worst = -margins_over_sites(_unjudged(overlay, axis), kernel, sites, engine.flow).min(axis=1)
+        found[first, second] = found[second, first] = worst
     return found
+
+
+def narrowed(kernel: Kernel, modes: IntArray) -> Kernel:
+    """Return the kernel of some of the modes; the others must not occur."""
+    source = kernel.table.source[modes]
+    active, starts = np.unique(source, return_index=True)
+    table = ModeTable(source, kernel.table.basis[modes], starts.astype(np.int64), active)
+    return Kernel(table, kernel.sigma[modes], kernel.bound[modes], kernel.offset[modes])
 
 
 def outer_sites(sites: Sites) -> Sites:
@@ -58,13 +69,8 @@ def outer_sites(sites: Sites) -> Sites:
     return Sites(positions, basis_at(positions), 1)
 
 
-def _unjudged(engine: Engine, axis: Axis, first: IntArray, second: IntArray) -> Residuals:
-    overlay = engine.placement.overlay(axis, list(first), list(second))
+def _unjudged(overlay: FloatArray, axis: Axis) -> Residuals:
     pair = Overlay(rule="overlay", between=("first", "second"))
-    return Residuals(
-        (Row(pair, "first", "second", axis),) * len(overlay),
-        overlay,
-        np.zeros_like(overlay),
-        np.full(len(overlay), np.nan),
-        np.zeros(len(overlay)),
-    )
+    none = np.zeros(len(overlay))
+    row = Row(pair, "first", "second", axis)
+    return Residuals((row,) * len(overlay), overlay, np.zeros_like(overlay), none + np.nan, none)

@@ -1,7 +1,7 @@
 """Geometry of the report's charts; the templates put it into SVG, so that text is escaped there."""
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
 from flowplan.engine.graph import Chain
@@ -116,12 +116,12 @@ class Squares:
 
 
 def squares(places: Sequence[tuple[int, int]], levels: Sequence[int]) -> tuple[Squares, ...]:
-    """Return fields grouped by class, neighbours in a row joined into one run.
+    """Return fields grouped by class, neighbours joined into runs along rows or along columns.
 
     Parameters
     ----------
     places : sequence of (int, int)
-        Column and row of each field, row by row, columns rising.
+        Column, and row counted downwards, of each field.
     levels : sequence of int
         The class of each field.
 
@@ -131,13 +131,38 @@ def squares(places: Sequence[tuple[int, int]], levels: Sequence[int]) -> tuple[S
         By class. A run of n fields is a line of length n - 1 that a dash pattern of pitch 1 cuts
         into n squares, so a map costs a few bytes a run.
     """
-    paths: dict[int, list[str]] = {}
-    i = 0
-    while i < len(places):
-        column, row = places[i]
-        j = i + 1
-        while j < len(places) and levels[j] == levels[i] and places[j] == (column + j - i, row):
-            j += 1
-        paths.setdefault(levels[i], []).append(f"M{column} {row}h{j - i - 1}.1")
-        i = j
-    return tuple(Squares(level, "".join(paths[level])) for level in sorted(paths))
+    return tuple(
+        Squares(level, runs([place for place, own in zip(places, levels, strict=True) if own == level]))
+        for level in sorted(set(levels))
+    )
+
+
+def runs(places: Sequence[tuple[int, int]]) -> str:
+    """Return the shorter of two paths over grid places: along their rows or along their columns."""
+    along_rows = "".join(f"M{_xy(c, r)}h{n}" for r, c, n in _runs((row, column) for column, row in places))
+    along_columns = "".join(f"M{_xy(c, r)}v{n}" for c, r, n in _runs(places))
+    return min(along_rows, along_columns, key=len)
+
+
+def _runs(places: Iterable[tuple[int, int]]) -> Iterator[tuple[int, int, str]]:
+    """Yield (line, start, length) of every unbroken run of (line, position)."""
+    start: tuple[int, int] | None = None
+    length = 0
+    for line, position in sorted(places):
+        if start is not None and (line, position) == (start[0], start[1] + length):
+            length += 1
+            continue
+        if start is not None:
+            yield (*start, _beyond(length))
+        start, length = (line, position), 1
+    if start is not None:
+        yield (*start, _beyond(length))
+
+
+def _beyond(length: int) -> str:
+    """Return a line's length a little past its last square, so that no renderer drops that one."""
+    return f"{length - 1 or ''}.1"
+
+
+def _xy(column: int, row: int) -> str:
+    return f"{column}{row}" if row < 0 else f"{column} {row}"

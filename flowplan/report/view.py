@@ -7,13 +7,14 @@ from importlib.metadata import PackageNotFoundError, version
 from flowplan.engine.analysis import Result
 from flowplan.report.viewanswer import AnswerView, answer_view
 from flowplan.report.viewbase import Base, plain
+from flowplan.report.viewbudget import BudgetBook
 from flowplan.report.viewhops import HopBook
 from flowplan.report.viewmap import LEVELS, MapFrame, map_frame, maps_of
 from flowplan.report.viewmargins import MarginsView, margins_view
 from flowplan.report.viewmasks import FeatureView, MaskRow, features_view, masks_view
 from flowplan.report.viewmatrix import MatrixView, matrix_view
 from flowplan.report.viewnotes import NotesView, notes_view
-from flowplan.report.viewpairs import PairView, pairs_view, remarks_of
+from flowplan.report.viewpairs import Books, PairView, pairs_view, remarks_of
 from flowplan.report.viewtools import MaskTerms, ToolView, mask_terms_view, tool_anchors, tools_view
 from flowplan.report.viewtree import TreeView, tree_view
 
@@ -73,7 +74,7 @@ def report_view(result: Result, progress: Progress | None = None) -> ReportView:
         matrix=matrix_view(base),
         map_frame=frame,
         map_levels=LEVELS,
-        pairs=pairs_view(base, book, maps_of(base, frame), progress),
+        pairs=pairs_view(Books(base, book, BudgetBook(base), maps_of(base, frame)), progress),
         masks=masks_view(base, tool_anchors(base)),
         tools=tools_view(base),
         mask_terms=mask_terms_view(base),

@@ -102,7 +102,7 @@ def point_words(entry: Entry) -> str:
     if entry.point is None:
         return "the same everywhere"
     at = entry.point
-    return f"field at ({plain(at.X)}, {plain(at.Y)}) mm, site ({plain(at.x)}, {plain(at.y)}) mm"
+    return f"field ({plain(at.X)}, {plain(at.Y)}), site ({plain(at.x)}, {plain(at.y)}) mm"
 
 
 def hop_words(base: Base, hop: HopFigures, axis: str) -> str:

@@ -85,7 +85,7 @@ class Base:
     def signed(self, nm: float | None) -> str:
         """Return a length with its sign, 0 without one."""
         text = self.length(nm)
-        return f"+{text}" if nm is not None and nm > 0 and text[0] not in "0<" else text
+        return f"+{text}" if nm is not None and nm > 0 and text not in ("0", NONE) else text
 
     def plus_minus(self, nm: float) -> str:
         """Return a length that goes both ways."""

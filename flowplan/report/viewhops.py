@@ -144,10 +144,10 @@ def compared_words(book: HopBook, entry: Entry) -> str:
     share = "" if math.isclose(exact, 0.0) else f" ({percent(abs(plain - exact) / exact)})"
     if too_high:
         return (
-            f"Plain RSS is too high by {by}{share}: it counts hop by hop what the two layers share "
-            f"and what cancels between them: {named}."
+            f"Plain RSS is {by}{share} too high: hop by hop it counts {named}, though these cancel, wholly "
+            f"or in part, between the two layers."
         )
     return (
-        f"Plain RSS is too low by {by}{share}: these act on several hops in the same direction and add "
-        f"up before they are squared: {named}."
+        f"Plain RSS is {by}{share} too low: {named} act in the same direction on several hops and add up "
+        f"before they are squared."
     )

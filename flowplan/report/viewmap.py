@@ -11,7 +11,7 @@ from flowplan.engine.results import Entry
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.base import AXES
 from flowplan.model.geometry import field_size, usable_radius
-from flowplan.report.charts import Squares, squares
+from flowplan.report.charts import Squares, runs, squares
 from flowplan.report.viewbase import Base
 from flowplan.units import convert
 
@@ -25,23 +25,36 @@ _FLAT = 1e-9
 
 @dataclass(frozen=True, slots=True)
 class MapFrame:
-    """What all wafer maps of a report share.
+    """What all wafer maps of a report share; lengths in squares unless said otherwise.
 
     Attributes
     ----------
-    radius, usable : float
-        Of the wafer [mm]; 0 without a wafer.
-    pitch_x, pitch_y : float
-        Of the squares [mm].
+    width, height : float
+        Size of one square [mm].
     block : int
         Fields joined along each axis in one square.
+    view_box : str
+        What a map shows; x and y have scales of their own, so that a square has unit size.
+    rim_x, rim_y, usable_x, usable_y : float
+        Half axes of the wafer's and the usable rim.
     """
 
-    radius: float
-    usable: float
-    pitch_x: float
-    pitch_y: float
+    width: float
+    height: float
     block: int
+    view_box: str
+    rim_x: float
+    rim_y: float
+    usable_x: float
+    usable_y: float
+
+    @classmethod
+    def of(cls, radius: float, usable: float, pitch: tuple[float, float], block: int) -> "MapFrame":
+        """Return the frame of a wafer [mm] with fields of a pitch [mm], joined to blocks."""
+        width, height = pitch[0] * block, pitch[1] * block
+        x, y = round(radius / width, 2), round(radius / height, 2)
+        box = " ".join(f"{v:.4g}" for v in (-x - 0.1, -y - 0.1, 2 * x + 0.2, 2 * y + 0.2))
+        return cls(width, height, block, box, x, y, round(usable / width, 2), round(usable / height, 2))
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,9 +89,9 @@ def map_frame(base: Base) -> MapFrame | None:
     widest = len(np.unique(sites.centres[:, 0]))
     block = math.ceil(widest / _MOST_COLUMNS)
     if flow.wafer is None or radius is None:
-        return MapFrame(0.0, 0.0, width, height, 1)
+        return MapFrame.of(0.0, 0.0, (width, height), 1)
     full = convert(flow.wafer.diameter.in_base(flow.unit) / 2, "nm", "mm")
-    return MapFrame(full, radius, width * block, height * block, block)
+    return MapFrame.of(full, radius, (width, height), block)
 
 
 def maps_of(base: Base, frame: MapFrame | None) -> dict[int, MapView]:
@@ -106,10 +119,10 @@ class _Painter:
     def __init__(self, base: Base, frame: MapFrame) -> None:
         sites = base.result.engine.sites
         self._base, self._n_fields = base, sites.n_fields
-        pitch = (frame.pitch_x, frame.pitch_y)
+        pitch = (frame.width, frame.height)
         grid = np.rint(sites.centres / pitch).astype(np.int64)
         places, self._block_of = np.unique(grid[:, ::-1], axis=0, return_inverse=True)
-        self._places = [(int(column), int(row)) for row, column in places]
+        self._places = [(int(column), -int(row)) for row, column in places]
         self._joined = frame.block > 1
 
     def paint(self, margins: FloatArray) -> MapView:
@@ -119,7 +132,7 @@ class _Painter:
             blocks = np.full(len(self._places), np.inf)
             np.minimum.at(blocks, self._block_of.reshape(-1), fields)
             return self._map("wafer", self._places, blocks, "square" if self._joined else "field")
-        places = [(column, row) for row in (-1, 0, 1) for column in (-1, 0, 1)]
+        places = [(column, -row) for row in (-1, 0, 1) for column in (-1, 0, 1)]
         return self._map("field", places, by_field.min(axis=0), "site")
 
     def _map(self, kind: str, places: Sequence[tuple[int, int]], margins: FloatArray, one: str) -> MapView:
@@ -129,7 +142,7 @@ class _Painter:
         words = f"{base.signed(low)} to {base.signed(high)} by {one}"
         if failing and base.result.flow.pairs:
             words += f"; below 0 in {len(failing)} of {len(places)}"
-        crosses = "".join(f"M{c} {r}h.1" for c, r in failing)
+        crosses = runs(failing)
         return MapView(kind, squares(places, levels(margins).tolist()), crosses, words)
 
 

@@ -7,8 +7,8 @@ from flowplan.engine.results import Entry, Verdict
 from flowplan.model.flow import BASES, Basis
 from flowplan.model.pairs import AnyPair
 from flowplan.report.viewanswer import WORDS, point_words
-from flowplan.report.viewbase import BASIS_WORDS, NONE, Base, capability, per_million
-from flowplan.report.viewbudget import BudgetRow, budget_rows
+from flowplan.report.viewbase import NONE, Base, capability, per_million
+from flowplan.report.viewbudget import BudgetBook, BudgetRow
 from flowplan.report.viewhops import HopBook, chain_text, compared_words
 from flowplan.report.viewmap import MapView
 
@@ -61,6 +61,16 @@ class PairView:
     blocks: tuple[PairBlock, ...]
 
 
+@dataclass(frozen=True, slots=True)
+class Books:
+    """What the fold-outs draw on: the result, its hops, its sources and the maps by entry."""
+
+    base: Base
+    hops: HopBook
+    budgets: BudgetBook
+    maps: dict[int, MapView]
+
+
 def remarks_of(part: object) -> tuple[tuple[str, str], ...]:
     """Return the free text of a part of the flow: (what it is, text)."""
     words = {"title": "Title", "notes": "Notes", "owner": "Owner", "why": "Why"}
@@ -68,34 +78,30 @@ def remarks_of(part: object) -> tuple[tuple[str, str], ...]:
     return tuple((label, text) for label, text in found if text)
 
 
-def pairs_view(
-    base: Base, book: HopBook, maps: dict[int, MapView], progress: Progress | None = None
-) -> tuple[PairView, ...]:
+def pairs_view(books: Books, progress: Progress | None = None) -> tuple[PairView, ...]:
     """Return the fold-outs in file order.
 
     Parameters
     ----------
-    base : Base
-        The result.
-    book : HopBook
-        Its hops.
-    maps : dict of int to MapView
-        By the entry's place.
+    books : Books
+        What the fold-outs draw on.
     progress : callable, optional
         Called with (pairs done, pairs in all).
     """
+    base = books.base
     groups: dict[int, list[tuple[int, Entry]]] = {}
     for i, entry in enumerate(base.result.entries):
         groups.setdefault(id(entry.pair), []).append((i, entry))
     found = []
     for group in groups.values():
-        found.append(_pair(base, book, maps, group))
+        found.append(_pair(books, group))
         if progress:
             progress(len(found), len(groups))
     return tuple(found)
 
 
-def _pair(base: Base, book: HopBook, maps: dict[int, MapView], group: list[tuple[int, Entry]]) -> PairView:
+def _pair(books: Books, group: list[tuple[int, Entry]]) -> PairView:
+    base = books.base
     pair: AnyPair = group[0][1].pair
     blocks: dict[tuple[str, str], list[tuple[int, Entry]]] = {}
     for i, entry in group:
@@ -110,7 +116,7 @@ def _pair(base: Base, book: HopBook, maps: dict[int, MapView], group: list[tuple
         word=WORDS[worst],
         summary=_summary(base, [entry for _, entry in group]),
         remarks=remarks_of(pair),
-        blocks=tuple(_block(base, book, maps, layers, rows) for layers, rows in blocks.items()),
+        blocks=tuple(_block(books, layers, rows) for layers, rows in blocks.items()),
     )
 
 
@@ -125,21 +131,25 @@ def _summary(base: Base, entries: list[Entry]) -> str:
 
 
 def _block(
-    base: Base,
-    book: HopBook,
-    maps: dict[int, MapView],
+    books: Books,
     layers: tuple[str, str],
     rows: list[tuple[int, Entry]],
 ) -> PairBlock:
     entries = [entry for _, entry in rows]
+    base = books.base
     columns = tuple(
         PairColumn(
-            e.axis, e.verdict, WORDS[e.verdict], chain_text(e.chain), compared_words(book, e), maps.get(i)
+            e.axis,
+            e.verdict,
+            WORDS[e.verdict],
+            chain_text(e.chain),
+            compared_words(books.hops, e),
+            books.maps.get(i),
         )
         for i, e in rows
     )
     heading = f"{layers[0]} and {layers[1]}"
-    return PairBlock(heading, columns, _facts(base, entries), budget_rows(base, entries))
+    return PairBlock(heading, columns, _facts(base, entries), books.budgets.rows(entries))
 
 
 def _facts(base: Base, entries: list[Entry]) -> tuple[Fact, ...]:
@@ -161,7 +171,7 @@ def _facts(base: Base, entries: list[Entry]) -> tuple[Fact, ...]:
     facts += [_basis_fact(base, entries, basis) for basis in BASES]
     facts += [
         row(f"Overlay alone, random {at}", lambda e: base.plus_minus(e.overlay.random)),
-        row("… by plain RSS along the chain", lambda e: _chain_rss(base, e)),
+        row("The same by plain chain RSS", lambda e: _chain_rss(base, e)),
         row("Cpk", lambda e: capability(e.cpk)),
         row("Fails, ppm", lambda e: per_million(e.fail_probability)),
         row("Worst point", point_words),
@@ -179,4 +189,5 @@ def _basis_fact(base: Base, entries: list[Entry], name: Basis) -> Fact:
     for e in entries:
         need = f"need {base.length(e.need.on(name))}"
         cells.append(need if e.margin is None else f"{need}, margin {base.signed(e.margin.on(name))}")
-    return Fact(f"Basis {name}: {BASIS_WORDS[name]}", tuple(cells), name == flow.basis)
+    chosen = name == flow.basis
+    return Fact(f"Basis {name}" + (", the verdict's" if chosen else ""), tuple(cells), chosen)
