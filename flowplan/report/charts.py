@@ -1,6 +1,5 @@
 """Geometry of the report's charts; the templates put it into SVG, so that text is escaped there."""
 
-import math
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
@@ -9,11 +8,13 @@ from flowplan.report.tree import cut
 
 _BOX_W, _BOX_H, _STEP = 148, 30, 66
 _LEFT, _MIDDLE, _RIGHT = 90, 210, 330
-_WIDTH = 420
+_WIDTH, _SINGLE = 420, 220
 #: A box holds so many characters of an id.
 _FITS = 17
 #: A bar that runs past its end is cut at this share of its length.
 _MOST = 1.3
+#: Steps of a bar that is as long as the whole.
+BAR_STEPS = 30
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,8 +44,9 @@ class Line:
 
 @dataclass(frozen=True, slots=True)
 class ChainDrawing:
-    """A chain as boxes and lines in a fixed width; the common reference stands at the top."""
+    """A chain as boxes and lines; the common reference stands at the top, `left` is the first x."""
 
+    left: int
     width: int
     height: int
     box_width: int
@@ -86,7 +88,8 @@ def chain_drawing(chain: Chain, labels: Sequence[str]) -> ChainDrawing:
         for (child, ref), label in zip(chain.hops(), labels, strict=True)
     ]
     height = max(y for _, y in places.values()) + _BOX_H // 2 + 6
-    return ChainDrawing(_WIDTH, height, _BOX_W, _BOX_H, tuple(boxes), tuple(lines))
+    left, width = (_MIDDLE - _SINGLE // 2, _SINGLE) if single else (0, _WIDTH)
+    return ChainDrawing(left, width, height, _BOX_W, _BOX_H, tuple(boxes), tuple(lines))
 
 
 def _line(child: tuple[int, int], reference: tuple[int, int], label: str) -> Line:
@@ -100,11 +103,22 @@ def _line(child: tuple[int, int], reference: tuple[int, int], label: str) -> Lin
     )
 
 
-def bar(share: float, length: int) -> int:
-    """Return the length of a bar for a share of the whole, cut where it runs far past the end."""
-    if math.isnan(share):
+def bar(share: float) -> int:
+    """Return the length of a bar in steps of 1/`BAR_STEPS` of the whole.
+
+    Parameters
+    ----------
+    share : float
+        Share of the whole; a bar that runs far past the whole is cut at 1.3 times of it.
+
+    Returns
+    -------
+    int
+        The style sheet has a class for each length. What is not 0 has at least one step.
+    """
+    if share == 0:
         return 0
-    return round(min(max(share, 0.0), _MOST) * length)
+    return max(1, round(min(share, _MOST) * BAR_STEPS))
 
 
 @dataclass(frozen=True, slots=True)

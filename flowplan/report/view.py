@@ -15,7 +15,7 @@ from flowplan.report.viewmasks import FeatureView, MaskRow, features_view, masks
 from flowplan.report.viewmatrix import MatrixView, matrix_view
 from flowplan.report.viewnotes import NotesView, notes_view
 from flowplan.report.viewpairs import Books, PairView, pairs_view, remarks_of
-from flowplan.report.viewtools import MaskTerms, ToolView, mask_terms_view, tool_anchors, tools_view
+from flowplan.report.viewtools import MaskTerm, ToolView, mask_terms_view, tool_anchors, tools_view
 from flowplan.report.viewtree import TreeView, tree_view
 
 Progress = Callable[[int, int], None]
@@ -48,7 +48,7 @@ class ReportView:
     pairs: tuple[PairView, ...]
     masks: tuple[MaskRow, ...]
     tools: tuple[ToolView, ...]
-    mask_terms: tuple[MaskTerms, ...]
+    mask_terms: tuple[MaskTerm, ...]
     features: tuple[FeatureView, ...]
     notes: NotesView
 

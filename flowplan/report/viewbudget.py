@@ -16,10 +16,10 @@ from flowplan.report.viewbase import NONE, Base, percent
 
 #: Rows of their own; what is smaller stands together in the row of the rest.
 SHOWN = 6
-#: Length of a full bar [px].
-BAR = 60
 BoolArray = NDArray[np.bool_]
 _VARYING: tuple[Kind, ...] = ("random", "uniform")
+#: Owners of a row that are named; more are counted.
+_NAMED = 3
 #: What the engine names after the layer that is read counts as one group.
 _READ = ("alignment to ", "mark reading of ")
 
@@ -45,15 +45,25 @@ class BudgetRow:
 
 @dataclass(frozen=True, slots=True)
 class _Sizes:
-    """Groups of sources as arrays of shape (n_groups, n_columns), and the sources in each.
+    """Groups of sources and the columns of a budget.
 
-    `error` is the random part at the flow's confidence, or the bound or offset [nm]; offsets keep
-    their sign. `share` is of the variance.
+    Attributes
+    ----------
+    error : ndarray, shape (n_groups, n_columns)
+        The random part at the flow's confidence, or the bound, or the signed offset [nm].
+    share : ndarray, shape (n_groups, n_columns)
+        Of the variance.
+    members : ndarray of int, shape (n_groups,)
+        Sources in each that take part.
+    taking_part, group : ndarray of int, shape (n_taking_part,)
+        Those sources, and the group of each.
     """
 
     error: FloatArray
     share: FloatArray
     members: IntArray
+    taking_part: IntArray
+    group: IntArray
 
 
 @dataclass(frozen=True)
@@ -107,7 +117,9 @@ class BudgetBook:
             error[:, column] = confidence * np.sqrt(variance) + np.bincount(at, fixed, n)
             total = variance.sum()
             share[:, column] = variance / total if total else 0.0
-        return _Sizes(error, share, np.bincount(places[seen], minlength=n))
+        taking_part = np.flatnonzero(seen)
+        group = places[taking_part]
+        return _Sizes(error, share, np.bincount(group, minlength=n), taking_part, group)
 
     def _fixed(self, amount: FloatArray, index: IntArray) -> FloatArray:
         """Return bounds by size and offsets with their sign [nm]."""
@@ -125,9 +137,8 @@ class BudgetBook:
         full = float(largest.max(initial=0.0)) or 1.0
         rows = []
         for i in shown:
-            name, of, kind = labels[i]
-            of = of or ("" if sizes.members[i] == 1 else f"{sizes.members[i]} sources")
-            rows.append(BudgetRow(name, of, kind, self._amounts(sizes, i, kind, full)))
+            name, _, kind = labels[i]
+            rows.append(BudgetRow(name, self._owners(sizes, i), kind, self._amounts(sizes, i, kind, full)))
         rest = order[len(shown) :]
         if rest:
             count = int(sizes.members[rest].sum())
@@ -137,12 +148,18 @@ class BudgetBook:
             rows.append(BudgetRow(f"{count} smaller sources", "", "", amounts))
         return tuple(rows)
 
+    def _owners(self, sizes: _Sizes, i: int) -> str:
+        """Return the masks and tools behind a row, or how many sources it joins."""
+        sources = self.base.result.engine.placement.sources
+        found = dict.fromkeys(sources[k].of for k in sizes.taking_part[sizes.group == i])
+        return ", ".join(found) if len(found) <= _NAMED else f"{sizes.members[i]} sources"
+
     def _amounts(self, sizes: _Sizes, i: int, kind: Kind, full: float) -> tuple[Amount, ...]:
         found = []
         for error, share in zip(sizes.error[i].tolist(), sizes.share[i].tolist(), strict=True):
             word = self.base.signed(error) if kind == "offset" else self.base.plus_minus(error)
             part = percent(share) if kind in _VARYING and error else NONE
-            found.append(Amount(word if error else NONE, part, bar(abs(error) / full, BAR)))
+            found.append(Amount(word if error else NONE, part, bar(abs(error) / full)))
         return tuple(found)
 
     def _rest(
@@ -157,7 +174,7 @@ class BudgetBook:
         words += [f"{self.base.plus_minus(bound)} bound"] if bound else []
         words += [f"{self.base.signed(offset)} offset"] if offset else []
         share = percent(float(sizes.share[list(rest), column].sum())) if random else NONE
-        return Amount(", ".join(words) or NONE, share, bar((random + bound) / full, BAR))
+        return Amount(", ".join(words) or NONE, share, bar((random + bound) / full))
 
 
 def _numbered(keys: Iterable[tuple[str, str, Kind]]) -> tuple[list[tuple[str, str, Kind]], IntArray]:

@@ -87,7 +87,7 @@ class HopBook:
         )
 
     def double_counted(self, entry: Entry) -> tuple[tuple[str, float], ...]:
-        """Return sources that act on more than one hop: (name, chain variance less exact) [nm^2]."""
+        """Return sources that act on several hops: (name, variance hop by hop less exact) [nm^2]."""
         engine = self.base.result.engine
         kernel = engine.view(entry.axis).kernel
         amounts = self.at(entry) * kernel.sigma_by_source()
@@ -98,7 +98,7 @@ class HopBook:
         chosen = chosen[np.argsort(-np.abs(excess[chosen]), kind="stable")]
         book = engine.placement.sources
         sources = [book[int(kernel.table.active[i])] for i in chosen]
-        return tuple((f"{s.name} ({s.of})", float(excess[i])) for s, i in zip(sources, chosen, strict=True))
+        return tuple((s.name, float(excess[i])) for s, i in zip(sources, chosen, strict=True))
 
 
 def chain_text(chain: Chain) -> str:
@@ -136,18 +136,12 @@ def compared_words(book: HopBook, entry: Entry) -> str:
     if abs(plain - exact) <= _EQUAL * max(plain, exact):
         return "Both agree: no source acts on two hops of this chain in a way that matters."
     too_high = plain > exact
-    sources = [name for name, excess in book.double_counted(entry) if (excess > 0) == too_high]
-    named = ", ".join(sources[:_NAMED])
-    if len(sources) > _NAMED:
-        named += f" and {len(sources) - _NAMED} more"
+    names = dict.fromkeys(name for name, excess in book.double_counted(entry) if (excess > 0) == too_high)
+    named = ", ".join([*names][:_NAMED])
+    if len(names) > _NAMED:
+        named += f" and {len(names) - _NAMED} more"
     by = f"{base.length(abs(plain - exact))} {base.result.flow.unit}"
     share = "" if math.isclose(exact, 0.0) else f" ({percent(abs(plain - exact) / exact)})"
     if too_high:
-        return (
-            f"Plain RSS is {by}{share} too high: hop by hop it counts {named}, though these cancel, wholly "
-            f"or in part, between the two layers."
-        )
-    return (
-        f"Plain RSS is {by}{share} too low: {named} act in the same direction on several hops and add up "
-        f"before they are squared."
-    )
+        return f"Plain RSS is {by}{share} too high: it counts {named} on each hop, but these parts cancel."
+    return f"Plain RSS is {by}{share} too low: it takes {named} as new on each hop, but these parts add up."

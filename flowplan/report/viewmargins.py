@@ -7,9 +7,6 @@ from flowplan.report.charts import bar
 from flowplan.report.viewanswer import WORDS
 from flowplan.report.viewbase import NONE, Base, LayerName, capability, per_million, percent
 
-#: Length of the bar when the need takes all the room [px].
-BAR = 60
-
 
 @dataclass(frozen=True, slots=True)
 class MarginRow:
@@ -40,14 +37,13 @@ class MarginsView:
 
     rows: tuple[MarginRow, ...]
     layers: tuple[LayerName, ...]
-    bar: int
 
 
 def margins_view(base: Base) -> MarginsView:
     """Return the margin table."""
     named = {name for e in base.result.entries for name in e.layers}
     layers = tuple(layer for name, layer in base.names.items() if name in named)
-    return MarginsView(tuple(_row(base, e) for e in base.result.entries), layers, BAR)
+    return MarginsView(tuple(_row(base, e) for e in base.result.entries), layers)
 
 
 def used_share(need: float, room: float) -> float:
@@ -74,7 +70,7 @@ def _row(base: Base, entry: Entry) -> MarginRow:
         need=base.length(need),
         margin=base.signed(None if entry.margin is None else base.result.margin(entry)),
         used=("no room" if used == float("inf") else percent(used)) if judged else NONE,
-        bar=bar(used, BAR),
+        bar=bar(used),
         verdict=entry.verdict,
         word=WORDS[entry.verdict],
         cpk=capability(entry.cpk),

@@ -190,4 +190,4 @@ def _basis_fact(base: Base, entries: list[Entry], name: Basis) -> Fact:
         need = f"need {base.length(e.need.on(name))}"
         cells.append(need if e.margin is None else f"{need}, margin {base.signed(e.margin.on(name))}")
     chosen = name == flow.basis
-    return Fact(f"Basis {name}" + (", the verdict's" if chosen else ""), tuple(cells), chosen)
+    return Fact(f"Basis {name}" + (" (verdict)" if chosen else ""), tuple(cells), chosen)

@@ -34,11 +34,11 @@ class ToolView:
 
 
 @dataclass(frozen=True, slots=True)
-class MaskTerms:
-    """The terms of one mask alone, and what its readings override."""
+class MaskTerm:
+    """A term of one mask alone, or a reading that overrides its tool's alignment."""
 
     layer: LayerName
-    terms: tuple[TermRow, ...]
+    term: TermRow
 
 
 def tool_anchors(base: Base) -> dict[str, str]:
@@ -63,8 +63,8 @@ def tools_view(base: Base) -> tuple[ToolView, ...]:
     )
 
 
-def mask_terms_view(base: Base) -> tuple[MaskTerms, ...]:
-    """Return the masks that have terms or alignment figures of their own."""
+def mask_terms_view(base: Base) -> tuple[MaskTerm, ...]:
+    """Return what single masks add to their tools' terms, in process order."""
     found = []
     for mask in base.result.flow.masks:
         rows = [_term(base, label, term, on_tool=False) for label, term in mask.terms.items()]
@@ -74,8 +74,7 @@ def mask_terms_view(base: Base) -> tuple[MaskTerms, ...]:
             for r in readings
             if r.alignment is not None
         ]
-        if rows:
-            found.append(MaskTerms(base.names[mask.id], tuple(rows)))
+        found += [MaskTerm(base.names[mask.id], row) for row in rows]
     return tuple(found)
 
 
