@@ -13,6 +13,7 @@ from flowplan.report.textchain import explanation_record
 from flowplan.report.textfigures import Figures, percent
 
 _SHOWN = 3
+_SAME = 1e-9
 _EFFECTS = {"cancels": "gone", "shrinks": "smaller", "grows": "larger"}
 
 
@@ -55,7 +56,7 @@ class _Page:
         entry, flow = self.entry, self.flow
         first, second = entry.layers
         show_note(f"{second} on {first}, along {entry.axis}", strong=True)
-        show_note(f"lengths in {flow.unit}, random at {flow.confidence:g} sigma")
+        show_note(f"lengths in {flow.unit}: offset ± random at {flow.confidence:g} sigma ± bounds")
         if entry.point:
             p = entry.point
             where = f"field at {p.X:g}, {p.Y:g} mm, site {p.x:g}, {p.y:g} mm from its centre"
@@ -85,10 +86,12 @@ class _Page:
             layers = [layer for layer in self.flow.layers if layer in inherited]
             span = layers[0] if len(layers) == 1 else f"{layers[0]} to {layers[-1]}"
             rows.append((f"all that both inherit from {span}", "", "", self.figures.text(0.0), "gone"))
-        self._section("What cancels" if rows else "Nothing cancels: no source is shared")
+        grows = any(row.effect == "grows" for row in self.explanation.shared)
+        title = "What cancels and what adds up" if grows else "What cancels"
+        self._section(title if rows else "Nothing cancels: no source is shared")
         if rows:
             columns = (
-                Column("source", folds=True), Column("kind"), Column("step by step", "right"),
+                Column("source"), Column("kind"), Column("step by step", "right"),
                 Column("exact", "right"), Column(""),
             )  # fmt: skip
             show_table(columns, rows, indent=2)
@@ -98,7 +101,7 @@ class _Page:
             return
         self._section("Where the overlay comes from")
         columns = (
-            Column("source", folds=True), Column("kind"), Column("amount", "right"), Column("share", "right"),
+            Column("source"), Column("kind"), Column("amount", "right"), Column("share", "right"),
         )  # fmt: skip
         rows = [
             (
@@ -132,10 +135,10 @@ class _Page:
             return "-", "not defined where references are averaged"
         excess = self.explanation.excess
         note = ""
-        if excess is not None and abs(excess) < 5e-5:
+        if excess is not None and abs(excess) < _SAME:
             note = "the same"
         elif excess is not None:
-            note = f"{abs(excess):.1%} too {'large' if excess > 0 else 'small'}".replace("%", " %")
+            note = f"{percent(abs(excess))} too {'large' if excess > 0 else 'small'}"
         return self.figures.text(self.entry.chain_rss), note
 
     def _show_alternative(self) -> None:
@@ -159,12 +162,13 @@ class _Page:
             verdicts = dict.fromkeys((change.before.verdict, change.after.verdict))
             rows.append((f"margin of {change.before.pair.name}", was, now, " to ".join(verdicts)))
         columns = (
-            Column("", folds=True), Column("now", "right"), Column("then", "right"), Column("verdict"),
+            Column(""), Column("now", "right"), Column("then", "right"), Column("verdict"),
         )  # fmt: skip
         show_table(columns, rows, indent=2)
         before, after = (_count_line(counts) for counts in other.counts)
-        told = f"{before}, before and after" if before == after else f"{before} now, {after} then"
-        emit(f"  whole flow, {basis} basis: {told}")
+        told = [f"{before}, before and after"] if before == after else [f"{before} now", f"{after} then"]
+        for label, line in zip((f"whole flow, {basis} basis:", ""), told, strict=False):
+            emit(f"  {label:<{len(basis) + 19}} {line}")
 
     def _section(self, title: str) -> None:
         emit("")

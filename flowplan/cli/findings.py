@@ -13,6 +13,8 @@ from flowplan.errors import Diagnostic, Span
 _LINE_END = re.compile(r"\r\n|[\n\r\x85\u2028\u2029]")
 _WIDTH = 74
 _BEFORE = 60
+#: A longer list helps nobody; mending these shows the next.
+_MOST_SHOWN = 200
 
 
 def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> None:
@@ -27,8 +29,11 @@ def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> 
     """
     lines = _LINE_END.split(source) if source is not None else []
     coloured = has_colour(sys.stderr)
-    for finding in findings:
+    found = tuple(findings)
+    for finding in found[:_MOST_SHOWN]:
         tell("\n".join(_finding_lines(finding, lines, coloured=coloured)))
+    if len(found) > _MOST_SHOWN:
+        tell(f"… and {len(found) - _MOST_SHOWN} more")
 
 
 def count_findings(findings: Iterable[Diagnostic]) -> str:
@@ -54,19 +59,24 @@ def finding_record(finding: Diagnostic) -> dict[str, Any]:
 
 def _finding_lines(finding: Diagnostic, lines: list[str], *, coloured: bool) -> list[str]:
     def paint(text: str, **style: Any) -> str:
-        return typer.style(text, **style) if coloured else text
+        return typer.style(text, **style) if coloured and text else text
 
     place = f"{finding.span}: " if finding.span else "flowplan: "
     word = "warning: " if finding.severity == "warning" else ""
     tint = "yellow" if word else "red"
     head = paint(printable(place), bold=True) + paint(word, fg=tint) + printable(finding.message)
     shown = [f"{head} {paint(f'[{finding.code}]', fg=tint)}"]
-    if finding.span and finding.span.line <= len(lines):
+    if finding.span and finding.span.line <= len(lines) and _is_text(lines[finding.span.line - 1]):
         text, caret = _excerpt(lines[finding.span.line - 1], finding.span)
-        shown += [f"    {text}", "    " + paint(caret, fg=tint)] if text.strip() else []
+        shown += [f"    {text}", "    " + paint(caret, fg=tint)]
     if finding.hint:
         shown.append(f"    hint: {printable(finding.hint)}")
     return shown
+
+
+def _is_text(line: str) -> bool:
+    """Whether a line is worth showing: something in it, and no control characters."""
+    return bool(line.strip()) and all(c.isprintable() or c == "\t" for c in line)
 
 
 def _excerpt(line: str, span: Span) -> tuple[str, str]:

@@ -108,7 +108,7 @@ def chain(
     axis: Annotated[AxisName | None, typer.Option(help="One axis; both when left out.")] = None,
     form: Annotated[TextOrJson, typer.Option("--format", help="Text or JSON.")] = TextOrJson.TEXT,
 ) -> None:
-    """Explain the overlay of two layers: chain, what cancels, sources, direct alignment."""
+    """Explain the overlay of two layers: chain, sources, better reading."""
     from flowplan.cli.chain import chain as work
 
     work(flow, first, second, (axis.value,) if axis else ("x", "y"), as_json=form is TextOrJson.JSON)
@@ -128,6 +128,51 @@ def tree(
     from flowplan.cli.tree import tree as work
 
     work(flow, output, axis.value if axis else None)
+
+
+@app.command(epilog="Example: flowplan report flows/cmos.yaml -o cmos.html")
+@guarded
+def report(
+    flow: FlowArgument,
+    output: Annotated[
+        str | None,
+        typer.Option(
+            "-o", "--output", metavar="FILE", help="Where to; the flow's name with .html, here, if left out."
+        ),
+    ] = None,
+    strict: StrictOption = False,
+) -> None:
+    """Write the report, one HTML page that needs nothing else."""
+    from flowplan.cli.report import report as work
+
+    work(flow, output, strict=strict)
+
+
+@app.command(epilog="Example: flowplan new my.yaml")
+@guarded
+def new(
+    output: Annotated[
+        str, typer.Argument(metavar="FILE", help="The file to write; - prints the flow.")
+    ] = "flow.yaml",
+    force: Annotated[bool, typer.Option("--force", help="Replace a file that exists.")] = False,
+) -> None:
+    """Write a commented starter flow to change into your own."""
+    from flowplan.cli.starter import new as work
+
+    work(output, force=force)
+
+
+@app.command(epilog="Example: flowplan schema -o flow.schema.json")
+@guarded
+def schema(
+    output: Annotated[
+        str | None, typer.Option("-o", "--output", metavar="FILE", help="Write to this file instead.")
+    ] = None,
+) -> None:
+    """Print the JSON Schema of a flow file, for editors."""
+    from flowplan.cli.schema import schema as work
+
+    work(output)
 
 
 def run() -> None:

@@ -62,7 +62,7 @@ def _room(result: Result, entry: Entry) -> float:
     return float("inf") if entry.margin is None else result.margin(entry)
 
 
-_LEADING = (Column("pair", folds=True), Column("layers", folds=True), Column("axis"), Column("through"))
+_LEADING = (Column("pair"), Column("layers"), Column("axis"), Column("through"))
 _JUDGED = (Column("need", "right"), Column("margin", "right"), Column("verdict"))
 _OVERLAY = (Column("overlay", "right"),)
 
@@ -105,7 +105,8 @@ def _show(result: Result) -> None:
     columns, rows = _table(result)
     show_table(columns, rows)
     emit("")
-    emit(f"{printable(verdict_line(result))}; worst: {printable(worst_line(result))}")
+    emit(verdict_line(result))
+    emit(f"worst: {printable(worst_line(result))}")
     if any(e.chain.one_of_several for e in result.entries):
         show_note("* one of several ways: references are averaged")
 

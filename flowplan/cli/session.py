@@ -53,11 +53,17 @@ def open_flow(name: str) -> Opened:
 
     Raises
     ------
+    UsageError
+        FP602, for an empty name.
     RefusedError
         When the flow is at fault; holds the text for showing the places.
     """
     from flowplan.files.reader import MOST_BYTES, parse_bytes, read_bytes
 
+    if not name.strip():
+        raise UsageError(
+            [Diagnostic("FP602", "no flow file is named", "`flowplan new` writes a starter flow")]
+        )
     if name == STDIN:
         name, raw = "<stdin>", sys.stdin.buffer.read(MOST_BYTES + 1)
     else:

@@ -5,6 +5,8 @@ import os
 import sys
 from typing import Any, TextIO
 
+from flowplan.errors import Diagnostic, OutputError
+
 #: What output that is not UTF-8 gets instead of the signs flowplan uses.
 _PLAIN = str.maketrans(
     {
@@ -55,5 +57,8 @@ def _write(stream: TextIO, text: str) -> None:
     try:
         stream.write(text + "\n")
         stream.flush()
-    except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
+    except OSError as error:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())  # what is still buffered goes nowhere
+        if not isinstance(error, BrokenPipeError):
+            message = f"cannot write {stream.name}: {error.strerror}"
+            raise OutputError([Diagnostic("FP501", message)]) from None

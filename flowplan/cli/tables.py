@@ -1,5 +1,7 @@
-"""Tables: calm and coloured on a terminal, plain aligned text in a pipe."""
+"""Tables: calm, coloured on a terminal, plain and always of one width in a pipe."""
 
+import io
+import shutil
 import sys
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
@@ -7,38 +9,49 @@ from typing import Literal
 
 from flowplan.cli.streams import emit, has_colour, printable
 
-_GAP = "  "
+_PIPE_WIDTH = 80
 #: Colours say what the words already say.
 _STYLES = {"fail": "bold red", "tight": "yellow", "pass": "green"}
 
 
 @dataclass(frozen=True, slots=True)
 class Column:
-    """A column's heading, its alignment, and whether a terminal may fold its text."""
+    """A column's heading and alignment; figures stand right and are never folded."""
 
     name: str
     align: Literal["left", "right"] = "left"
-    folds: bool = False
 
 
 def show_table(columns: Sequence[Column], rows: Iterable[Sequence[str]], indent: int = 0) -> None:
-    """Print a table on standard output.
+    """Print a table on standard output, its words folded to fit.
 
     Parameters
     ----------
     columns : sequence of Column
-        A terminal keeps the table within its width by folding the columns that may fold; a pipe
-        gets one line a row, whatever its length.
+        A terminal keeps the table within its width, a pipe within 80 columns.
     rows : iterable of sequence of str
         One text a column.
     indent : int
         Spaces before each line.
     """
-    cells = [[printable(cell) for cell in row] for row in rows]
-    if sys.stdout.isatty():
-        _show_rich(columns, cells, indent)
-    else:
-        _show_plain(columns, cells, indent)
+    from rich.console import Console
+    from rich.padding import Padding
+    from rich.table import Table
+    from rich.text import Text
+
+    coloured = has_colour(sys.stdout)
+    table = Table(box=None, padding=(0, 2, 0, 0), header_style="dim", pad_edge=False)
+    for column in columns:
+        table.add_column(Text(column.name), justify=column.align, no_wrap=column.align == "right")
+    for row in rows:
+        table.add_row(*(Text(printable(cell), style=_STYLES.get(cell, "")) for cell in row))
+    paper = io.StringIO()
+    width = shutil.get_terminal_size().columns if sys.stdout.isatty() else _PIPE_WIDTH
+    console = Console(
+        file=paper, width=width, force_terminal=coloured, color_system="standard" if coloured else None
+    )
+    console.print(Padding(table, (0, 0, 0, indent)))
+    emit("\n".join(line.rstrip() for line in paper.getvalue().splitlines()))
 
 
 def show_note(text: str, *, strong: bool = False) -> None:
@@ -61,37 +74,3 @@ def _markdown(cell: str) -> str:
     for sign in "\\|<`*_":
         text = text.replace(sign, "\\" + sign)
     return text
-
-
-def _show_plain(columns: Sequence[Column], rows: list[list[str]], indent: int) -> None:
-    lines = [[column.name for column in columns], *rows]
-    widths = [max(len(line[i]) for line in lines) for i in range(len(columns))]
-    for line in lines:
-        padded = [
-            cell.rjust(width) if column.align == "right" else cell.ljust(width)
-            for cell, width, column in zip(line, widths, columns, strict=True)
-        ]
-        emit((" " * indent + _GAP.join(padded)).rstrip())
-
-
-def _show_rich(columns: Sequence[Column], rows: list[list[str]], indent: int) -> None:
-    from rich.console import Console
-    from rich.padding import Padding
-    from rich.table import Table
-    from rich.text import Text
-
-    table = Table(box=None, padding=(0, 2, 0, 0), header_style="dim", pad_edge=False)
-    for column in columns:
-        table.add_column(
-            Text(column.name),
-            justify=column.align,
-            no_wrap=not column.folds,
-            overflow="fold",
-            ratio=None,
-        )
-    for row in rows:
-        table.add_row(*(Text(cell, style=_STYLES.get(cell, "")) for cell in row))
-    console = Console(highlight=False)
-    with console.capture() as captured:
-        console.print(Padding(table, (0, 0, 0, indent)))
-    emit("\n".join(line.rstrip() for line in captured.get().splitlines()))

@@ -36,7 +36,7 @@ def _show(flow: Flow, axes: tuple[Axis, ...]) -> None:
     show_note(f"{flow.flow}, revision {flow.revision}" if flow.revision else flow.flow, strong=True)
     along = "" if len(axes) > 1 else f", along {axes[0]}"
     show_note(f"each layer stands below the one it aligns to{along}")
-    columns = (Column("", "right"), Column("layer"), Column("aligns to", folds=True))
+    columns = (Column("", "right"), Column("layer"), Column("aligns to"))
     rows = [
         ("" if line.number is None else str(line.number), line.branch + line.name, line.reads)
         for line in tree_lines(flow, axes)

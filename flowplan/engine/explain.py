@@ -64,8 +64,8 @@ class Shared:
     in_overlay : float
         What is left of it in D_second - D_first [nm].
     apart : float
-        What adding it up place by place would count [nm]: over the hops of the chain, or over the
-        two placements where that is more, or where references are averaged.
+        What adding it up part by part would count [nm]: over the hops of the chain, or over the two
+        placements where it enters at no hop or references are averaged.
     in_hops : bool
         Whether it enters at a hop; if not, both layers inherit it from further up or share a tool.
     """
@@ -79,7 +79,7 @@ class Shared:
 
     @property
     def effect(self) -> Effect:
-        """Whether it is gone, smaller or larger than place by place."""
+        """Whether it is gone, or smaller or larger than part by part."""
         if self.in_overlay == 0:
             return "cancels"
         return "shrinks" if abs(self.in_overlay) < self.apart else "grows"
@@ -255,12 +255,11 @@ def _shared(
 
 def _apart(source: Source, first: float, second: float, hops: list[float]) -> float:
     """Return what a source would come to if its parts were added as if they were strangers."""
+    if source.kind == "offset":
+        hops = []  # their signs are known, so nobody adds them wrongly hop by hop
     inherited = [first, second] if first and second else []
-    if source.kind == "bound":
-        return max(sum(map(abs, hops)), sum(map(abs, inherited)))
-    if source.kind == "offset":  # hops carry their signs, so only what both layers inherit is counted twice
-        return sum(map(abs, inherited))
-    return max(math.hypot(*hops), math.hypot(*inherited))
+    parts = hops if any(hops) else inherited
+    return sum(map(abs, parts)) if source.kind in ("bound", "offset") else math.hypot(*parts)
 
 
 def _refusal(engine: Engine, later: str, earlier: str, axis: Axis) -> str:

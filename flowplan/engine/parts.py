@@ -49,7 +49,7 @@ class Kernel:
         return np.asarray(np.add.reduceat(amounts, self.table.starts, axis=1))
 
     def sigma_by_source(self) -> FloatArray:
-        """Standard deviation per amount of each active source, shape (n_active,)."""
+        """Return the standard deviation per amount of each active source, shape (n_active,)."""
         return self.sigma[self.table.starts]
 
     def at_points(self, amounts: FloatArray, basis: FloatArray) -> FloatArray:
@@ -122,7 +122,7 @@ class Kernel:
             The sum [nm].
         """
         total = np.zeros((len(amounts), basis.shape[1]))
-        ends = np.append(self.table.starts[1:], self.table.size)
+        ends = np.append(self.table.starts, self.table.size)[1:]
         shaped = np.zeros(self.table.size, dtype=bool)
         for start, end in zip(self.table.starts, ends, strict=True):
             if weight[start] and self.table.basis[start:end].any():

@@ -25,6 +25,7 @@ import numpy as np
 
 from flowplan.engine.sources import (
     FloatArray,
+    IntArray,
     ModeTable,
     Source,
     SourceBook,
@@ -67,7 +68,9 @@ class Placement:
     pattern: dict[Axis, FloatArray]
     edge: dict[Axis, FloatArray]
 
-    def overlay(self, axis: Axis, first: list[int], second: list[int]) -> FloatArray:
+    def overlay(
+        self, axis: Axis, first: list[int], second: list[int], modes: IntArray | None = None
+    ) -> FloatArray:
         """Return D_second - D_first, shape (n_pairs, n_modes), with cancelled modes exactly 0.
 
         Parameters
@@ -76,8 +79,11 @@ class Placement:
             Axis of the overlay.
         first, second : list of int
             Rows of the layers, see `index`.
+        modes : ndarray of int, optional
+            Only these modes.
         """
-        a, b = self.pattern[axis][first], self.pattern[axis][second]
+        pattern = self.pattern[axis] if modes is None else self.pattern[axis][:, modes]
+        a, b = pattern[first], pattern[second]
         difference = b - a
         difference[np.abs(difference) <= _DUST * (np.abs(a) + np.abs(b))] = 0.0
         return difference

@@ -86,10 +86,7 @@ def parse(text: str, name: str = "<text>") -> Loaded:
         hint = "`flowplan new` writes a starter flow"
         raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1))])
     flow, findings = build(data)
-    if flow is not None:
-        findings = check(flow)
-    else:
-        findings = (*findings, *_findings_in_remainder(data, findings))
+    findings = check(flow) if flow is not None else (*findings, *_findings_in_remainder(data, findings))
     placed = _place(findings, places)
     if flow is None or any(d.severity == "error" for d in placed):
         raise FlowError(placed)
@@ -98,14 +95,16 @@ def parse(text: str, name: str = "<text>") -> Loaded:
 
 def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> list[Diagnostic]:
     rest = salvage(data, findings)
-    if rest.flow is None:
+    if rest.flow is None or not isinstance(data, dict):
         return []
+    lost_size = any(part in data and getattr(rest.flow, part) is None for part in ("field", "wafer"))
     return [
         Diagnostic(d.code, d.message, d.hint, rest.original(d.path), None, d.severity)
         for d in check(rest.flow)
         if d.severity == "error"
         and not any(repr(name) in d.message for name in rest.dropped)
-        and not (d.path and d.path[0] not in data)  # type: ignore[operator]
+        and not (d.path and d.path[0] not in data)
+        and not (d.code == "FP403" and lost_size)
     ]
 
 

@@ -13,7 +13,8 @@ def write_atomically(file: str | os.PathLike[str], content: str | bytes) -> None
     Parameters
     ----------
     file : path-like
-        Where the content goes; the folder must exist.
+        Where the content goes; the folder must exist. A link is followed; a device or a pipe is
+        written to.
     content : str or bytes
         Text is written as UTF-8.
 
@@ -22,26 +23,36 @@ def write_atomically(file: str | os.PathLike[str], content: str | bytes) -> None
     OutputError
         FP501, when the folder does not exist or cannot be written.
     """
-    target = Path(file)
     raw = content.encode("utf-8") if isinstance(content, str) else content
-    temporary = ""
     try:
+        target = Path(file).resolve()
         if target.is_dir():
             raise IsADirectoryError(21, "is a folder")
-        handle, temporary = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name}.")
-        with os.fdopen(handle, "wb") as stream:
-            stream.write(raw)
-            stream.flush()
-            os.fsync(stream.fileno())
-        os.chmod(temporary, _mode(target))
-        os.replace(temporary, target)
+        if target.exists() and not target.is_file():
+            target.write_bytes(raw)  # a device or a pipe is written to, never replaced
+        else:
+            _replace(target, raw)
     except (OSError, ValueError) as error:
-        if temporary:
-            Path(temporary).unlink(missing_ok=True)
         reason = getattr(error, "strerror", None) or str(error)
         hint = "name a file in a folder that exists and can be written"
         message = f"cannot write {os.fspath(file)!r}: {reason}"
         raise OutputError([Diagnostic("FP501", message, hint)]) from None
+
+
+def _replace(target: Path, raw: bytes) -> None:
+    """Write beside the target, then put it in the target's place in one step."""
+    handle, name = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name[:100]}.")
+    temporary = Path(name)
+    try:
+        with os.fdopen(handle, "wb") as stream:
+            stream.write(raw)
+            stream.flush()
+            os.fsync(stream.fileno())
+        temporary.chmod(_mode(target))
+        temporary.replace(target)
+    except BaseException:
+        temporary.unlink(missing_ok=True)
+        raise
 
 
 def _mode(target: Path) -> int:

@@ -1,6 +1,7 @@
 """YAML text to plain data with the place of every key and value."""
 
 import re
+from collections.abc import Iterable
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -9,7 +10,9 @@ from flowplan.errors import Diagnostic, FlowError, Path, Span
 #: Deeper than any flow file needs; YAML nested deeper is a mistake or an attack.
 MOST_DEPTH = 40
 #: More nodes than this after unfolding aliases are a mistake or an attack.
-MOST_NODES = 400_000
+MOST_NODES = 150_000
+#: Stream and document count as two levels of events.
+_ENVELOPE = 2
 
 _INTEGER = re.compile(r"[-+]?[0-9]+|0o[0-7]+|0x[0-9a-fA-F]+")
 _FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
@@ -90,6 +93,7 @@ def compose(text: str, file: str) -> Any:
     from ruamel.yaml.error import MarkedYAMLError, YAMLError, YAMLStreamError
 
     try:
+        _measure(YAML(typ="safe").parse(text), file)
         return YAML(typ="safe").compose(text)
     except MarkedYAMLError as error:
         mark = error.problem_mark or error.context_mark
@@ -97,15 +101,25 @@ def compose(text: str, file: str) -> Any:
         raise FlowError([_syntax(error, span)]) from None
     except (YAMLError, YAMLStreamError, ValueError) as error:
         raise FlowError([_unreadable(str(error), text, file)]) from None
-    except RecursionError:
-        raise FlowError([_too_deep(Span(file, 1, 1))]) from None
+
+
+def _measure(events: Iterable[Any], file: str) -> None:
+    """Refuse what is nested too deeply or holds too much, before a recursive reader meets it."""
+    depth = 0
+    for number, event in enumerate(events):
+        kind = type(event).__name__
+        depth += kind.endswith("StartEvent") - kind.endswith("EndEvent")
+        span = Span(file, event.start_mark.line + 1, event.start_mark.column + 1)
+        if depth > MOST_DEPTH + _ENVELOPE:
+            raise FlowError([_too_deep(span)])
+        if number > MOST_NODES:
+            message = f"more than {MOST_NODES} values, which no flow file needs"
+            raise FlowError([Diagnostic("FP103", message, "is this the right file?", span=span)])
 
 
 def _syntax(error: Any, span: Span) -> Diagnostic:
     problem = " ".join(str(error.problem or "not valid YAML").split())
     context = f" {error.context}" if error.context else ""
-    if "nesting depth" in problem:
-        return _too_deep(span)
     if "another document" in problem:
         return Diagnostic("FP109", "a second document starts here", "one flow a file", span=span)
     if "undefined alias" in problem:

@@ -41,11 +41,13 @@ def build(data: object) -> tuple[Flow | None, tuple[Diagnostic, ...]]:
     try:
         return Flow.model_validate(data), ()
     except ValidationError as error:
-        found = {}
+        found: dict[tuple[Path, str], Diagnostic] = {}
         for detail in error.errors(include_url=False, include_input=False):
+            if len(found) == MOST_DIAGNOSTICS:
+                break
             diagnostic = _translate(detail, data)
-            found[(diagnostic.path, diagnostic.message)] = diagnostic
-        return None, tuple(found.values())[:MOST_DIAGNOSTICS]
+            found.setdefault((diagnostic.path, diagnostic.message), diagnostic)
+        return None, tuple(found.values())
 
 
 def follow(data: object, path: Path) -> object:
@@ -60,7 +62,7 @@ def follow(data: object, path: Path) -> object:
     return data
 
 
-def real_path(data: object, loc: Sequence[str | int]) -> Path:
+def real_path(data: Any, loc: Sequence[str | int]) -> Path:
     """Reduce an error location to the steps that exist in the data.
 
     The model also knows forms that the file may leave out (the x of a single value) and names of
@@ -68,13 +70,10 @@ def real_path(data: object, loc: Sequence[str | int]) -> Path:
     """
     path: list[str | int] = []
     for step in loc:
-        if (isinstance(data, dict) and step in data) or (
-            isinstance(data, list) and isinstance(step, int) and step < len(data)
-        ):
+        present: Any = data if isinstance(data, dict) else range(len(data)) if isinstance(data, list) else ()
+        if step in present:
             data = data[step]
-        else:
-            continue
-        path.append(step)
+            path.append(step)
     return tuple(path)
 
 

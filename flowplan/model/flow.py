@@ -55,7 +55,8 @@ class Wafer(Model):
 
     diameter: PositiveLength = Field(description="Diameter.")
     edge_exclusion: NonNegativeLength = Field(
-        default=Quantity(0.0), description="Ring at the rim that is not used."
+        default_factory=lambda: Quantity(0.0),
+        description="Ring at the rim that is not used; 0 when left out.",
     )
 
 

@@ -61,7 +61,9 @@ class References(Model):
         several = full["properties"]["x"]
         one = several["items"]
         either = {"anyOf": [one, {"type": "array", "items": one, "minItems": 1}]}
-        per_axis = full | {"properties": dict.fromkeys(AXES, either)}
+        per_axis = full | {
+            "properties": {axis: either | {"description": f"What is read along {axis}."} for axis in AXES}
+        }
         return one_or_more(per_axis, *either["anyOf"])
 
     def on(self, axis: Axis) -> tuple[Reading, ...]:

@@ -8,7 +8,11 @@ from flowplan.errors import Diagnostic, Path
 from flowplan.model.build import build, follow
 from flowplan.model.flow import Flow
 
-_ROUNDS = 3
+_ROUNDS = 5
+#: In the first rounds values go, then what is left without its needed values: `{random: .nan}`, then `cd`.
+_VALUES_ONLY = 2
+#: Without these whole parts every reference to what they name would look wrong.
+_NAMING: frozenset[Path] = frozenset({("tools",), ("masks",), ("self_aligned",), ("split_layers",)})
 
 
 @dataclass(slots=True)
@@ -58,22 +62,25 @@ def salvage(data: object, diagnostics: Sequence[Diagnostic]) -> Salvaged:
     result = Salvaged()
     if isinstance(rest, dict):
         result.kept = {k: list(range(len(v))) for k, v in rest.items() if isinstance(v, list)}
-    for diagnostic in diagnostics:
-        _take_out(rest, diagnostic.path)
-    for _ in range(_ROUNDS):
+    if isinstance(rest, dict):
+        rest.setdefault("flow", "unnamed")
+    left = tuple(diagnostics)
+    for number in range(_ROUNDS):
+        for diagnostic in left:
+            _take_out(rest, diagnostic.path)
+        if number >= _VALUES_ONLY:
+            for entry in sorted({d.path[:2] for d in left if len(d.path) > 1}, key=str, reverse=True):
+                _drop_entry(rest, entry, result)
         result.flow, left = build(rest)
         if result.flow is not None:
             break
-        entries = {d.path[:2] for d in left if len(d.path) > 1}
-        for entry in sorted(entries, key=str, reverse=True):
-            _drop_entry(rest, entry, result)
     return result
 
 
 def _take_out(data: object, path: Path) -> None:
     """Delete the value at a path from its mapping, where it stands in one."""
     parent = follow(data, path[:-1])
-    if len(path) > 1 and isinstance(parent, dict) and path[-1] != "id":
+    if path and isinstance(parent, dict) and path[-1] != "id" and path not in _NAMING:
         parent.pop(path[-1], None)
 
 

@@ -64,7 +64,7 @@ class SizeParts(Model):
     ) -> dict[str, Any]:
         per_axis = {
             "type": "object",
-            "properties": dict.fromkeys(AXES, QUANTITY_SCHEMA),
+            "properties": {a: QUANTITY_SCHEMA | {"description": f"Random, along {a}."} for a in AXES},
             "required": list(AXES),
             "additionalProperties": False,
         }

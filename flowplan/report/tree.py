@@ -165,7 +165,8 @@ def _lines(words: list[str]) -> str:
     """Return words below each other; the only escape sequences are the line breaks."""
     import graphviz
 
-    return graphviz.nohtml("\\n".join(_text(cut(word)) for word in words))
+    label: str = graphviz.nohtml("\\n".join(_text(cut(word)) for word in words))
+    return label
 
 
 def cut(text: str, longest: int = _LONGEST) -> str:
@@ -178,7 +179,8 @@ def _text(text: str) -> str:
     """Return text that DOT shows as it is: no escape sequence, no entity, no markup."""
     import graphviz
 
-    return graphviz.escape(cut(text, 200).replace("&", "&amp;"))
+    shown: str = graphviz.escape(cut(text, 200).replace("&", "&amp;"))
+    return shown
 
 
 def draw(dot: str, fmt: Format) -> bytes:

@@ -16,7 +16,8 @@ MINUS = "\N{MINUS SIGN}"
 NONE = "\N{EN DASH}"
 #: Figures of the middle of a report show this many significant digits.
 _DIGITS = 4
-_MOST_DECIMALS = 12
+#: No figure is shown finer than this.
+_FINEST_NM = 0.01
 
 BASIS_WORDS: dict[Basis, str] = {
     "mixed": "bounds added, random parts root-sum-square",
@@ -59,7 +60,7 @@ class Base:
         unit = self.result.flow.unit
         flow = self.result.flow
         needs = [in_unit(e.need.on(flow.basis), unit) or 0.0 for e in self.result.entries]
-        return decimals_for(needs)
+        return decimals_for(needs, in_unit(_FINEST_NM, unit) or 1.0)
 
     @cached_property
     def names(self) -> dict[str, LayerName]:
@@ -85,19 +86,20 @@ class Base:
     def signed(self, nm: float | None) -> str:
         """Return a length with its sign, 0 without one."""
         text = self.length(nm)
-        return f"+{text}" if nm is not None and nm > 0 and text[0] not in "0<" else text
+        return f"+{text}" if nm is not None and nm > 0 and text not in ("0", NONE) else text
 
     def plus_minus(self, nm: float) -> str:
         """Return a length that goes both ways."""
         return f"±{self.length(nm)}"
 
 
-def decimals_for(values: Iterable[float]) -> int:
-    """Return how many decimals show the middle of some values to four significant digits."""
+def decimals_for(values: Iterable[float], finest: float) -> int:
+    """Return how many decimals show the middle of some values to four digits, but none below `finest`."""
     sizes = [abs(v) for v in values if v]
+    most = round(-math.log10(finest))
     if not sizes:
-        return 1
-    return min(_MOST_DECIMALS, max(0, _DIGITS - 1 - math.floor(math.log10(median(sizes)))))
+        return max(0, min(1, most))
+    return max(0, min(most, _DIGITS - 1 - math.floor(math.log10(median(sizes)))))
 
 
 def number(value: float, decimals: int) -> str:

@@ -28,7 +28,18 @@ def wheel(tmp_path_factory: pytest.TempPathFactory) -> Path:
 def installed(wheel: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
     target = tmp_path_factory.mktemp("installed")
     subprocess.run(
-        [sys.executable, "-m", "pip", "install", "--quiet", "--no-deps", "--no-index", "--target", str(target), str(wheel)],
+        [
+            sys.executable,
+            "-m",
+            "pip",
+            "install",
+            "--quiet",
+            "--no-deps",
+            "--no-index",
+            "--target",
+            str(target),
+            str(wheel),
+        ],
         check=True,
         capture_output=True,
     )
@@ -38,14 +49,20 @@ def installed(wheel: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
 def _run(installed: Path, folder: Path, *arguments: str) -> subprocess.CompletedProcess[str]:
     script = f"import sys; sys.path.insert(0, {str(installed)!r}); from flowplan.cli.main import run; run()"
     return subprocess.run(
-        [sys.executable, "-I", "-c", script, *arguments], cwd=folder, capture_output=True, text=True, check=False
+        [sys.executable, "-I", "-c", script, *arguments],
+        cwd=folder,
+        capture_output=True,
+        text=True,
+        check=False,
     )
 
 
 def test_wheel_holds_templates_flows_and_the_typing_mark(wheel: Path):
     names = set(zipfile.ZipFile(wheel).namelist())
     flows = {f"flowplan/flows/{path.name}" for path in (ROOT / "flows").glob("*.yaml")}
-    templates = {f"flowplan/templates/{path.name}" for path in (ROOT / "templates").iterdir() if path.is_file()}
+    templates = {
+        f"flowplan/templates/{path.name}" for path in (ROOT / "templates").iterdir() if path.is_file()
+    }
     assert len(flows) >= 6
     assert flows | templates | {"flowplan/py.typed"} <= names
 
@@ -70,4 +87,7 @@ def test_packaged_example_reports(installed: Path, tmp_path: Path):
     example = installed / "flowplan" / "flows" / "cmos.yaml"
     made = _run(installed, tmp_path, "report", str(example), "-o", "cmos.html")
     assert made.returncode == 0, made.stderr
-    assert "default-src &#39;none&#39;" in (page := (tmp_path / "cmos.html").read_text("utf-8")) or "default-src 'none'" in page
+    assert (
+        "default-src &#39;none&#39;" in (page := (tmp_path / "cmos.html").read_text("utf-8"))
+        or "default-src 'none'" in page
+    )
