@@ -53,6 +53,7 @@ CODES: dict[str, str] = {
     "FP602": "the question does not fit the flow",
     "FP603": "a mask both freed and pinned",
     "FP604": "no mask has a choice of references",
+    "FP605": "unknown variant on the command line",
 }
 
 

@@ -17,15 +17,25 @@ _SAME = 1e-9
 _EFFECTS = {"cancels": "gone", "shrinks": "smaller", "grows": "larger"}
 
 
-def chain(name: str, first: str, second: str, axes: tuple[Axis, ...], *, as_json: bool) -> None:
+def chain(
+    name: str, variant: str | None, layers: tuple[str, str], axes: tuple[Axis, ...], *, as_json: bool
+) -> None:
     """Explain the overlay of two layers of a flow, axis by axis."""
-    flow = read_flow(name)
-    layers = known_layer(flow, first, wafer=True), known_layer(flow, second, wafer=True)
+    flow = read_flow(name, variant)
+    first, second = (known_layer(flow, layer, wafer=True) for layer in layers)
     engine = Engine.of(flow)
-    found = [(explain(engine, *layers, axis), direct(engine, *layers, axis)) for axis in axes]
+    found = [(explain(engine, first, second, axis), direct(engine, first, second, axis)) for axis in axes]
     if as_json:
         records = [explanation_record(e, d, flow.unit) for e, d in found]
-        emit_json({"flow": flow.flow, "unit": flow.unit, "layers": list(layers), "axes": records})
+        emit_json(
+            {
+                "flow": flow.flow,
+                "variant": flow.variant,
+                "unit": flow.unit,
+                "layers": [first, second],
+                "axes": records,
+            }
+        )
         return
     for number, (explanation, alternative) in enumerate(found):
         if number:

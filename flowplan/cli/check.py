@@ -14,10 +14,10 @@ from flowplan.report.records import entry_record
 from flowplan.report.textfigures import Figures
 
 
-def check(name: str, *, strict: bool, as_json: bool) -> None:
+def check(name: str, variant: str | None, *, strict: bool, as_json: bool) -> None:
     """Read a flow, print what was found and a summary of a sound one."""
     try:
-        opened = open_flow(name)
+        opened = open_flow(name, variant)
     except FlowError as error:
         if as_json:
             emit_json(_document(error.diagnostics, None))
@@ -54,7 +54,6 @@ def worst_line(result: Result) -> str:
 
 def _show_summary(opened: Opened, result: Result) -> None:
     flow = opened.flow
-    title = f"{flow.flow}, revision {flow.revision}" if flow.revision else flow.flow
     features = _count(len(flow.self_aligned), "self-aligned feature") if flow.self_aligned else ""
     used = len({mask.tool for mask in flow.masks})
     rows = [
@@ -64,7 +63,7 @@ def _show_summary(opened: Opened, result: Result) -> None:
         ("worst", worst_line(result)),
     ]
     found = count_findings(opened.warnings)
-    emit(f"{printable(title)}: sound" + (f", with {found}" if found else ""))
+    emit(f"{printable(flow.heading)}: sound" + (f", with {found}" if found else ""))
     for label, value in rows:
         emit(f"  {label:<9} {printable(value)}")
 
@@ -84,6 +83,7 @@ def _document(findings: tuple[Diagnostic, ...], result: Result | None) -> dict[s
         document["summary"] = {
             "flow": flow.flow,
             "revision": flow.revision or None,
+            "variant": flow.variant,
             "unit": flow.unit,
             "masks": len(flow.masks),
             "tools": len({mask.tool for mask in flow.masks}),

@@ -10,7 +10,7 @@ import typer
 
 from flowplan import __version__
 from flowplan.cli.options import AxisName, BasisName, Form, Order, TextOrJson, VerdictName
-from flowplan.cli.session import FlowArgument, StrictOption, guarded
+from flowplan.cli.session import FlowArgument, StrictOption, VariantOption, guarded
 from flowplan.cli.streams import emit
 
 app = typer.Typer(
@@ -53,11 +53,12 @@ def check(
     flow: FlowArgument,
     strict: StrictOption = False,
     form: Annotated[TextOrJson, typer.Option("--format", help="Text or JSON.")] = TextOrJson.TEXT,
+    variant: VariantOption = None,
 ) -> None:
     """Find every mistake in a flow file; sum up a sound one."""
     from flowplan.cli.check import check as work
 
-    work(flow, strict=strict, as_json=form is TextOrJson.JSON)
+    work(flow, variant, strict=strict, as_json=form is TextOrJson.JSON)
 
 
 @app.command(epilog="Example: flowplan margins flows/cmos.yaml --sort margin --layer GATE")
@@ -82,6 +83,7 @@ def margins(
         bool, typer.Option("--every-pair", help="The overlay of every two layers, judged by no limit.")
     ] = False,
     strict: StrictOption = False,
+    variant: VariantOption = None,
 ) -> None:
     """Print the margin of every pair of layers."""
     from flowplan.cli.margins import Choice
@@ -96,7 +98,7 @@ def margins(
         every_pair=every_pair,
         strict=strict,
     )
-    work(flow, choice)
+    work(flow, variant, choice)
 
 
 @app.command(epilog="Example: flowplan chain flows/cmos.yaml CONTACT METAL1 --axis x")
@@ -107,11 +109,13 @@ def chain(
     second: Annotated[str, typer.Argument(metavar="B", help="Another layer.", show_default=False)],
     axis: Annotated[AxisName | None, typer.Option(help="One axis; both when left out.")] = None,
     form: Annotated[TextOrJson, typer.Option("--format", help="Text or JSON.")] = TextOrJson.TEXT,
+    variant: VariantOption = None,
 ) -> None:
     """Explain the overlay of two layers: chain, sources, better reading."""
     from flowplan.cli.chain import chain as work
 
-    work(flow, first, second, (axis.value,) if axis else ("x", "y"), as_json=form is TextOrJson.JSON)
+    axes = (axis.value,) if axis else ("x", "y")
+    work(flow, variant, (first, second), axes, as_json=form is TextOrJson.JSON)
 
 
 @app.command(epilog="Example: flowplan tree flows/cmos.yaml -o tree.svg")
@@ -123,11 +127,12 @@ def tree(
         typer.Option("-o", "--output", metavar="FILE", help="Draw to this .svg, .png or .dot file instead."),
     ] = None,
     axis: Annotated[AxisName | None, typer.Option(help="One axis; both when left out.")] = None,
+    variant: VariantOption = None,
 ) -> None:
     """Show who aligns to whom."""
     from flowplan.cli.tree import tree as work
 
-    work(flow, output, axis.value if axis else None)
+    work(flow, variant, output, axis.value if axis else None)
 
 
 @app.command(epilog="Example: flowplan report flows/cmos.yaml -o cmos.html")
@@ -141,11 +146,12 @@ def report(
         ),
     ] = None,
     strict: StrictOption = False,
+    variant: VariantOption = None,
 ) -> None:
     """Write the report, one HTML page that needs nothing else."""
     from flowplan.cli.report import report as work
 
-    work(flow, output, strict=strict)
+    work(flow, variant, output, strict=strict)
 
 
 @app.command(epilog="Example: flowplan new my.yaml")

@@ -35,13 +35,13 @@ class Choice:
     strict: bool
 
 
-def margins(name: str, choice: Choice) -> None:
+def margins(name: str, variant: str | None, choice: Choice) -> None:
     """Print the margins of a flow."""
     if choice.every_pair and choice.strict:
         hint = "leave one of them out"
         message = "--every-pair lists overlays without a limit, so --strict has nothing to judge"
         raise UsageError([Diagnostic("FP602", message, hint)])
-    flow = read_flow(name)
+    flow = read_flow(name, variant)
     if choice.basis:
         flow = flow.model_copy(update={"basis": choice.basis})
     wanted = {
@@ -95,8 +95,7 @@ def _through(entry: Entry) -> str:
 
 def _show(result: Result) -> None:
     flow = result.flow
-    title = f"{flow.flow}, revision {flow.revision}" if flow.revision else flow.flow
-    show_note(title, strong=True)
+    show_note(flow.heading, strong=True)
     show_note(f"lengths in {flow.unit}, {flow.basis} basis, {flow.confidence:g} sigma")
     emit("")
     if not result.entries:

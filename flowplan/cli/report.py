@@ -13,11 +13,11 @@ from flowplan.cli.streams import printable, tell
 from flowplan.engine.analysis import analyse
 
 
-def report(name: str, output: str | None, *, strict: bool) -> None:
+def report(name: str, variant: str | None, output: str | None, *, strict: bool) -> None:
     """Write the report of a flow and say where, and how the flow stands."""
     target = output or default_output(name)
     refuse_flow_as_output(target, name)
-    flow = read_flow(name)
+    flow = read_flow(name, variant)
     from flowplan.report.page import render_report
 
     with Bar("margins") as bar:

@@ -24,14 +24,19 @@ FlowArgument = Annotated[
     str,
     typer.Argument(metavar="FLOW", help="The flow file (YAML); - reads standard input.", show_default=False),
 ]
+VariantOption = Annotated[
+    str | None,
+    typer.Option("--variant", metavar="NAME", help="Take this variant of the flow.", show_default=False),
+]
 StrictOption = Annotated[bool, typer.Option("--strict", help="Exit with status 1 if a pair fails.")]
 
 
 @dataclass(frozen=True, slots=True)
 class Opened:
-    """A flow that was read, and what was found on the way."""
+    """A flow that was read, its variants by name, and what was found on the way."""
 
     flow: Flow
+    variants: dict[str, Flow]
     warnings: tuple[Diagnostic, ...]
     text: str
 
@@ -48,13 +53,13 @@ class RefusedError(FlowError):
         self.text = text
 
 
-def open_flow(name: str) -> Opened:
-    """Read a flow file, or standard input for ``-``.
+def open_flow(name: str, variant: str | None = None) -> Opened:
+    """Read a flow file, or standard input for ``-``, and take one of its plans.
 
     Raises
     ------
     UsageError
-        FP602, for an empty name.
+        FP602, for an empty name; FP605, for a variant that the file does not have.
     RefusedError
         When the flow is at fault; holds the text for showing the places.
     """
@@ -73,12 +78,12 @@ def open_flow(name: str) -> Opened:
         loaded = parse_bytes(raw, name)
     except FlowError as error:
         raise RefusedError(error, text) from None
-    return Opened(loaded.flow, loaded.warnings, text)
+    return Opened(loaded.plan(variant), loaded.variants, loaded.warnings, text)
 
 
-def read_flow(name: str) -> Flow:
-    """Read a flow and show its warnings."""
-    opened = open_flow(name)
+def read_flow(name: str, variant: str | None = None) -> Flow:
+    """Read a flow, or one of its variants, and show its warnings."""
+    opened = open_flow(name, variant)
     opened.show_warnings()
     return opened.flow
 

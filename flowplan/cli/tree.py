@@ -13,10 +13,10 @@ from flowplan.model.flow import Flow
 from flowplan.report.texttree import tree_lines
 
 
-def tree(name: str, output: str | None, axis: Axis | None) -> None:
+def tree(name: str, variant: str | None, output: str | None, axis: Axis | None) -> None:
     """Print the alignment tree of a flow, or draw it to a file."""
     if output is None:
-        _show(read_flow(name), (axis,) if axis else AXES)
+        _show(read_flow(name, variant), (axis,) if axis else AXES)
         return
     from flowplan.report.tree import Format, alignment_dot, draw
 
@@ -28,12 +28,12 @@ def tree(name: str, output: str | None, axis: Axis | None) -> None:
     if axis is not None:
         hint = "leave --axis out; the drawing tells the axes apart by line style"
         raise UsageError([Diagnostic("FP602", "a drawing shows both axes", hint)])
-    write_output(output, draw(alignment_dot(read_flow(name)), kind), flow=name)
+    write_output(output, draw(alignment_dot(read_flow(name, variant)), kind), flow=name)
     tell(f"wrote {output}")
 
 
 def _show(flow: Flow, axes: tuple[Axis, ...]) -> None:
-    show_note(f"{flow.flow}, revision {flow.revision}" if flow.revision else flow.flow, strong=True)
+    show_note(flow.heading, strong=True)
     along = "" if len(axes) > 1 else f", along {axes[0]}"
     show_note(f"each layer stands below the one it aligns to{along}")
     columns = (Column("", "right"), Column("layer"), Column("aligns to"))

@@ -4,7 +4,8 @@ import os
 from dataclasses import dataclass
 from pathlib import Path as FilePath
 
-from flowplan.errors import Diagnostic, FlowError, Span
+from flowplan.errors import Diagnostic, FlowError, Span, UsageError, nearest
+from flowplan.files.plans import Examined, read_variants
 from flowplan.files.yamltext import Places, read_yaml
 from flowplan.model.build import build
 from flowplan.model.check import check
@@ -19,19 +20,37 @@ _AT_KEY = frozenset({"FP201", "FP309", "FP105"})
 
 @dataclass(frozen=True, slots=True)
 class Loaded:
-    """A sound flow with the warnings found in it."""
+    """A sound flow with the warnings found in it, and the file's variants by name."""
 
     flow: Flow
     warnings: tuple[Diagnostic, ...]
+    variants: dict[str, Flow]
+
+    def plan(self, variant: str | None = None) -> Flow:
+        """Return the file's own plan, or one of its variants.
+
+        Raises
+        ------
+        UsageError
+            FP605, for a name that no variant has.
+        """
+        if variant is None:
+            return self.flow
+        if variant not in self.variants:
+            hint = nearest(variant, list(self.variants)) or "add it under `variants:`"
+            raise UsageError([Diagnostic("FP605", f"the flow has no variant {variant!r}", hint)])
+        return self.variants[variant]
 
 
-def load(file: str | os.PathLike[str]) -> Flow:
+def load(file: str | os.PathLike[str], variant: str | None = None) -> Flow:
     """Read a flow file.
 
     Parameters
     ----------
     file : path-like
         A YAML file.
+    variant : str, optional
+        The name of one of its variants; the file's own plan when left out.
 
     Returns
     -------
@@ -42,8 +61,10 @@ def load(file: str | os.PathLike[str]) -> Flow:
     ------
     FlowError
         When anything is wrong with the file; holds every finding with line and column.
+    UsageError
+        FP605, for a name that no variant has.
     """
-    return load_with_warnings(file).flow
+    return load_with_warnings(file).plan(variant)
 
 
 def load_with_warnings(file: str | os.PathLike[str]) -> Loaded:
@@ -85,12 +106,19 @@ def parse(text: str, name: str = "<text>") -> Loaded:
         what = "the file is empty" if data is None else "a flow file is a mapping (key: value)"
         hint = "`flowplan new` writes a starter flow"
         raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1))])
-    flow, findings = build(data)
-    findings = check(flow) if flow is not None else (*findings, *_findings_in_remainder(data, findings))
-    placed = _place(findings, places)
+    flow, findings = base = _examine(data)
+    variants, of_variants = read_variants(data, base, _examine)
+    placed = _place((*findings, *of_variants), places)
     if flow is None or any(d.severity == "error" for d in placed):
         raise FlowError(placed)
-    return Loaded(flow, placed)
+    return Loaded(flow, placed, variants)
+
+
+def _examine(data: dict[str, object]) -> Examined:
+    """Build plain data as a flow and check it."""
+    flow, findings = build(data)
+    found = check(flow) if flow is not None else (*findings, *_findings_in_remainder(data, findings))
+    return flow, found
 
 
 def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> list[Diagnostic]:

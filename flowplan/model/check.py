@@ -53,6 +53,15 @@ def _ids_are_unique(flow: Flow) -> Iterator[Diagnostic]:
         seen.add(name)
 
 
+def _variants_have_names_of_their_own(flow: Flow) -> Iterator[Diagnostic]:
+    seen: set[str] = set()
+    for i, variant in enumerate(flow.variants):
+        if variant.name in seen:
+            message = f"two variants are called {variant.name!r}"
+            yield Diagnostic("FP302", message, "give each a name of its own", ("variants", i, "name"))
+        seen.add(variant.name)
+
+
 def _there_are_masks(flow: Flow) -> Iterator[Diagnostic]:
     if not flow.masks:
         yield Diagnostic("FP205", "the flow has no mask", "list the masks in process order", ("masks",))
@@ -255,4 +264,5 @@ RULES: tuple[Rule, ...] = (
     _sources_are_one_thing,
     _sizes_are_given,
     _geometry_is_there,
+    _variants_have_names_of_their_own,
 )

@@ -4,7 +4,7 @@ from collections.abc import Iterator
 from functools import cached_property
 from typing import Annotated, Literal, Self
 
-from pydantic import BeforeValidator, Field
+from pydantic import BeforeValidator, Field, PrivateAttr
 
 from flowplan.model.base import (
     Described,
@@ -20,6 +20,7 @@ from flowplan.model.masks import Mask, SelfAligned
 from flowplan.model.pairs import Pair
 from flowplan.model.terms import Shape, Term
 from flowplan.model.tools import Tool
+from flowplan.model.variants import Variant
 from flowplan.units import LENGTH_UNITS, Quantity, UnitError, canonical_unit
 
 Basis = Literal["mixed", "rss", "linear"]
@@ -88,6 +89,29 @@ class Flow(Described):
         default_factory=dict, description="Layers printed by several masks: id -> their ids."
     )
     pairs: tuple[Pair, ...] = Field((), description="Pairs of layers that must fit each other.")
+
+    variants: tuple[Variant, ...] = Field(
+        (), description="Other plans, each a partial flow laid over this one."
+    )
+
+    _variant: str | None = PrivateAttr(None)
+
+    @property
+    def variant(self) -> str | None:
+        """Name of the variant that this flow is; None for the file's own plan."""
+        return self._variant
+
+    def as_variant(self, name: str) -> Self:
+        """Return this flow under the name of a variant."""
+        named = self.model_copy()
+        named._variant = name
+        return named
+
+    @property
+    def heading(self) -> str:
+        """Name, revision and variant in one line."""
+        revision = f", revision {self.revision}" if self.revision else ""
+        return f"{self.flow}{revision}" + (f", variant {self.variant}" if self.variant else "")
 
     def __copy__(self) -> Self:
         """Copy without the cached views, which an update would make stale."""

@@ -105,7 +105,7 @@ class Mask(Described):
     may_align_to: tuple[References, ...] | None = Field(
         None,
         min_length=1,
-        description="Other references that `propose` may choose for this mask, each in a form of `aligns_to`.",
+        description="Other references that `propose` may choose, each in a form of `aligns_to`.",
     )
     cd: Size | None = Field(
         None, description="Variation of the full width (critical dimension); each edge moves by half."

@@ -6,17 +6,51 @@ finding points at the variant's line where the variant is at fault.
 """
 
 import copy
+from collections.abc import Iterator
 from dataclasses import dataclass, field
 from typing import Any
 
+from pydantic import Field
+
 from flowplan.errors import Diagnostic, Path, nearest
+from flowplan.model.base import Described, Id
 
 Data = dict[str, Any]
 
 #: Parts of the file that are lists of entries with a key of their own.
 KEYED_LISTS = {"masks": "id", "self_aligned": "id", "pairs": "name"}
+#: Parts of the file that are mappings from an id to an entry.
+MAPPINGS = ("tools", "split_layers")
+
+_PART = "What this variant changes in `{0}`, by {1}; the rest stays. A value of null takes a key away."
+
+
+class Variant(Described):
+    """A named partial flow, laid over the rest of the file."""
+
+    name: Id = Field(description="What `--variant` calls it.")
+    note: str = Field("", description="What it tries, in a sentence; shown where plans are compared.")
+    drop: tuple[Id, ...] = Field((), description="Ids, and names of pairs, that this variant leaves out.")
+    tools: Any = Field(None, description=_PART.format("tools", "id"))
+    masks: Any = Field(None, description=_PART.format("masks", "id"))
+    self_aligned: Any = Field(
+        None,
+        description=_PART.format("self_aligned", "id")
+        + " A feature with the id of a mask takes that mask's place.",
+    )
+    split_layers: Any = Field(None, description=_PART.format("split_layers", "id"))
+    pairs: Any = Field(None, description=_PART.format("pairs", "name"))
+    revision: Any = Field(None, description="Revision of this variant.")
+    sigma: Any = Field(None, description="Replaces the file's `sigma`.")
+    confidence: Any = Field(None, description="Replaces the file's `confidence`.")
+    basis: Any = Field(None, description="Replaces the file's `basis`.")
+    reserve: Any = Field(None, description="Replaces the file's `reserve`.")
+    wafer: Any = Field(None, description="What changes about the wafer.")
+    field: Any = Field(None, description="What changes about the exposure field.")
+
+
 #: Keys of a variant that are about the variant itself.
-OWN_KEYS = frozenset({"name", "note", "title", "notes", "owner", "why", "drop"})
+OWN_KEYS = frozenset({*Described.model_fields, "name", "note", "drop"})
 
 
 @dataclass(slots=True)
@@ -51,6 +85,7 @@ class Provenance:
 class Merged:
     """A base with a variant laid over it: plain data, its provenance and what went wrong."""
 
+    variant: Data
     data: Data
     provenance: Provenance
     findings: tuple[Diagnostic, ...]
@@ -87,14 +122,32 @@ class _Merge:
     def run(self) -> Merged:
         self._drop()
         for part, value in self.variant.items():
-            if part in OWN_KEYS:
+            if part in OWN_KEYS or part not in Variant.model_fields:
                 continue
-            if part in KEYED_LISTS and isinstance(value, dict):
-                for name, changes in value.items():
-                    self._change_entry(part, name, changes)
+            if part in KEYED_LISTS:
+                for name, changes, place in self._entries(part, value):
+                    self._change_entry(part, name, changes, place)
             else:
                 self._lay_over(self.data, part, value, (part,), (*self.at, part))
-        return Merged(self.data, self.provenance, tuple(self.findings))
+        return Merged(self.variant, self.data, self.provenance, tuple(self.findings))
+
+    def _entries(self, part: str, value: object) -> Iterator[tuple[str, object, Path]]:
+        """Yield (id or name, changes, place), from a mapping or from a list as the base writes it."""
+        key = KEYED_LISTS[part]
+        place = (*self.at, part)
+        if isinstance(value, dict):
+            yield from ((name, changes, (*place, name)) for name, changes in value.items())
+        elif isinstance(value, list):
+            for i, entry in enumerate(value):
+                if isinstance(entry, dict) and isinstance(entry.get(key), str):
+                    yield entry[key], {k: v for k, v in entry.items() if k != key}, (*place, i)
+                else:
+                    self._refuse("FP202", f"{key!r} is missing", f"add `{key}: …`", (*place, i))
+        elif value is not None:
+            self._refuse("FP203", f"a mapping from {key} to changes belongs here", "", place)
+
+    def _refuse(self, code: str, message: str, hint: str, path: Path) -> None:
+        self.findings.append(Diagnostic(code, message, hint, path))
 
     def _list(self, part: str) -> list[Any]:
         found = self.data.get(part)
@@ -107,13 +160,15 @@ class _Merge:
     def _drop(self) -> None:
         dropped = self.variant.get("drop") or []
         for i, name in enumerate(dropped if isinstance(dropped, list) else []):
-            if not any(self._remove(part, name) for part in KEYED_LISTS):
+            if not any(self._remove(part, name) for part in (*KEYED_LISTS, *MAPPINGS)):
                 known = [n for part in KEYED_LISTS for n in self._names(part) if n]
                 message = f"the variant drops {name!r}, which the flow does not have"
-                hint = nearest(str(name), known)
-                self.findings.append(Diagnostic("FP301", message, hint, (*self.at, "drop", i)))
+                self._refuse("FP301", message, nearest(str(name), known), (*self.at, "drop", i))
 
     def _remove(self, part: str, name: object) -> bool:
+        if part in MAPPINGS:
+            group = self.data.get(part)
+            return isinstance(group, dict) and isinstance(name, str) and group.pop(name, self) is not self
         names = self._names(part)
         if name not in names:
             return False
@@ -122,8 +177,7 @@ class _Merge:
         self.provenance.rows[part].pop(place)
         return True
 
-    def _change_entry(self, part: str, name: str, changes: object) -> None:
-        place = (*self.at, part, name)
+    def _change_entry(self, part: str, name: str, changes: object, place: Path) -> None:
         if part == "self_aligned":
             # A step that becomes self-aligned keeps its id, so that pairs keep pointing at it.
             self._remove("masks", name)
@@ -133,13 +187,16 @@ class _Merge:
             self._lay_over(self._list(part), at, changes, (part, at), place)
         elif part == "masks":
             message = f"the variant changes {name!r}, which is not a mask of the flow"
-            hint = nearest(name, [n for n in names if n])
-            self.findings.append(Diagnostic("FP301", message, hint, place))
+            self._refuse("FP301", message, nearest(name, [n for n in names if n]), place)
         else:
             self._append(part, name, changes, place)
 
     def _append(self, part: str, name: str, entry: object, place: Path) -> None:
-        rows = self.data.setdefault(part, [])
+        if self.data.get(part) is None:
+            self.data[part] = []
+        rows = self.data[part]
+        if not isinstance(rows, list):
+            return
         if isinstance(entry, dict):
             entry = {KEYED_LISTS[part]: name} | entry
         rows.append(copy.deepcopy(entry))
@@ -167,11 +224,4 @@ def _merges(path: Path) -> bool:
     if path[0] in KEYED_LISTS or path[0] == "tools":
         inner = path[2:]
         return not inner or inner[0] == "terms"
-    return path[0] in ("wafer", "field")
-
-
-def variant_names(base: Data) -> tuple[str, ...]:
-    """Return the names of a file's variants, in file order."""
-    variants = base.get("variants")
-    entries = variants if isinstance(variants, list) else []
-    return tuple(str(v.get("name", "")) for v in entries if isinstance(v, dict))
+    return path[0] in ("wafer", "field") or path == ("split_layers",)

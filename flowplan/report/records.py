@@ -48,7 +48,7 @@ def margins_document(result: Result, entries: tuple[Entry, ...] | None = None) -
         "unit": flow.unit,
         "basis": flow.basis,
         "confidence": flow.confidence,
-        "variant": None,
+        "variant": flow.variant,
         "counts": dict(shown.counts),
         "margins": [entry_record(entry, flow.unit) for entry in shown.entries],
     }

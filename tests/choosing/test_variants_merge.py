@@ -2,7 +2,7 @@
 
 from typing import Any
 
-from flowplan.model.variants import merge_variant, variant_names
+from flowplan.model.variants import merge_variant
 
 BASE: dict[str, Any] = {
     "flow": "Estuary",
@@ -95,8 +95,3 @@ def test_changing_a_mask_that_is_not_there_is_told():
     (finding,) = merged(masks={"GAT": {"cd": 1}}).findings
     assert finding.path == ("variants", 1, "masks", "GAT")
     assert "'GATE'" in finding.hint
-
-
-def test_names_come_in_file_order():
-    assert variant_names({"variants": [{"name": "b"}, {"name": "a"}]}) == ("b", "a")
-    assert variant_names(BASE) == ()

@@ -57,19 +57,23 @@ def source(name="t", size=1.0):
 class TestSourceBook:
     def test_another_key_is_another_source(self):
         book = SourceBook()
-        assert [book.source("a", source()), book.source("b", source())] == [0, 1]
+        assert [book.source("a", source(), "L"), book.source("b", source(), "L")] == [0, 1]
         assert len(book.sources) == 2
 
     def test_an_equal_key_is_the_same_source(self):
         book = SourceBook()
-        assert book.source("a", source()) == book.source("a", source())
+        assert book.source("a", source(), "L") == book.source("a", source(), "L")
         assert book.sources == [source()]
+
+    def test_a_book_kept_apart_tells_places_with_one_key_from_each_other(self):
+        book = SourceBook(apart=True)
+        assert [book.source("a", source(), place) for place in ("L", "M", "L")] == [0, 1, 0]
 
     @pytest.mark.parametrize("sizes", [(2.0, 5.0, 3.0), (5.0, 2.0, 3.0), (2.0, -5.0, 3.0)])
     def test_the_largest_size_quoted_for_it_counts(self, sizes):
         book = SourceBook()
         for size in sizes:
-            book.source("a", source(size=size))
+            book.source("a", source(size=size), "L")
         assert [abs(s.size) for s in book.sources] == [5.0]
 
     def test_a_mode_is_a_source_with_a_basis_function_on_one_axis(self):
