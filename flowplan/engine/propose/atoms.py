@@ -185,7 +185,14 @@ class _Builder:
     def __init__(
         self, flow: Flow, walk: Walk, axis: Axis, table: ModeTable, place: IntArray, sites: FloatArray
     ) -> None:
-        self.flow, self.walk, self.axis, self.table, self.place, self.sites = flow, walk, axis, table, place, sites
+        self.flow, self.walk, self.axis, self.table, self.place, self.sites = (
+            flow,
+            walk,
+            axis,
+            table,
+            place,
+            sites,
+        )
         self.kinds = [source.kind for source in walk.book.sources]
         self.sigma = np.array([deviation(kind, flow.sigma) for kind in self.kinds])
         self.shared = {source: k for k, source in enumerate(self._shared_sources())}
@@ -267,7 +274,11 @@ class _Builder:
         edges = kernel.by_source(res.edges)
         starts = kernel.table.starts
         sigma = kernel.sigma_by_source()
-        sizes = ((edges * sigma) ** 2).sum(axis=1), np.abs(edges) @ kernel.bound[starts], np.abs(edges) @ sigma
+        sizes = (
+            ((edges * sigma) ** 2).sum(axis=1),
+            np.abs(edges) @ kernel.bound[starts],
+            np.abs(edges) @ sigma,
+        )
         keep = ~np.isnan(res.drawn)
         return Rows(
             np.array([self.index[r.first] for r in rows], dtype=np.int64)[keep],

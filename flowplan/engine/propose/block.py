@@ -175,5 +175,3 @@ def open_parts(axis: AxisAtoms, plans: IntArray, decided: FloatArray) -> FloatAr
             found[:, i] += reads.weights[i, option, k, None] * found[which, reads.masks[i, option, k]]
         found[~decided[:, i], i] = np.eye(n)[i]
     return found
-
-

@@ -74,7 +74,9 @@ class AxisBounds:
         carried = (self.layer, self.marks, self.reads)
         self.is_signed = any(parts.signed.any() for parts in carried)
         self.n_signed = self.layer.signed.shape[-1]
-        averaged = (axis.reads.weights[..., 1:] != 0).any(axis=(1, 2)) if axis.reads.masks.shape[2] > 1 else None
+        averaged = (
+            (axis.reads.weights[..., 1:] != 0).any(axis=(1, 2)) if axis.reads.masks.shape[2] > 1 else None
+        )
         self.averaged = np.zeros(axis.n_masks, dtype=bool) if averaged is None else averaged
         rows = axis.rows
         self.late, self.early = np.maximum(rows.first, rows.second), np.minimum(rows.first, rows.second)
@@ -237,7 +239,14 @@ class AxisBounds:
         return to_frame + own, to_marks + own
 
     def _signed(
-        self, t: _Tables, ok: FloatArray, i: int, count: int, rows: IntArray, low: FloatArray, high: FloatArray
+        self,
+        t: _Tables,
+        ok: FloatArray,
+        i: int,
+        count: int,
+        rows: IntArray,
+        low: FloatArray,
+        high: FloatArray,
     ) -> None:
         """Carry the ranges of offsets and shared sources on to mask i."""
         masks, weights = self.axis.reads.masks[i, :count], self.axis.reads.weights[i, :count]

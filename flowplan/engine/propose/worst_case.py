@@ -30,7 +30,9 @@ def extreme_sites(sites: Sites) -> FloatArray:
         return sites.basis
     centres = hull(sites.centres)
     corners = hull(sites.positions[: sites.n_points // sites.n_fields, 2:])
-    positions = np.column_stack([np.repeat(centres, len(corners), axis=0), np.tile(corners, (len(centres), 1))])
+    positions = np.column_stack(
+        [np.repeat(centres, len(corners), axis=0), np.tile(corners, (len(centres), 1))]
+    )
     return basis_at(positions)
 
 
