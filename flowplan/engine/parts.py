@@ -139,4 +139,4 @@ class Kernel:
 def quadratic(form: FloatArray, basis: FloatArray) -> FloatArray:
     """Return phi V phi at every point, shape (n_rows, n_points); never below 0."""
     products = (basis[:, None] * basis[None]).reshape(N_BASIS * N_BASIS, -1)
-    return np.maximum(form.reshape(len(form), -1) @ products, 0.0)
+    return np.maximum(form.reshape(len(form), N_BASIS * N_BASIS) @ products, 0.0)

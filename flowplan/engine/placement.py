@@ -57,8 +57,9 @@ class Placement:
         What tells each source from the others; (key, (place, kind, axis)) when placed apart.
     modes : dict of axis to ModeTable
         What each column means.
-    pattern, edge : dict of axis to ndarray, shape (n_layers + 1, n_modes)
-        D and E [nm, or nm per mm of position] at the quoted sizes.
+    pattern, edge, marks : dict of axis to ndarray, shape (n_layers + 1, n_modes)
+        D, E and F + M, where later masks read the marks [nm, or nm per mm of position], at the
+        quoted sizes.
     """
 
     index: dict[str, int]
@@ -67,6 +68,7 @@ class Placement:
     modes: dict[Axis, ModeTable]
     pattern: dict[Axis, FloatArray]
     edge: dict[Axis, FloatArray]
+    marks: dict[Axis, FloatArray]
 
     def overlay(
         self, axis: Axis, first: list[int], second: list[int], modes: IntArray | None = None
@@ -112,7 +114,7 @@ def place(flow: Flow, *, apart: bool = False) -> Placement:
             walk.collect_terms(layer)
             for axis in AXES:
                 walk.parts[layer.id, "read", axis] = walk.reads(layer, layer.aligns_to.weighted(axis), axis)
-    return _assemble(flow, walk)
+    return assemble(flow, walk)
 
 
 class Walk:
@@ -170,9 +172,7 @@ class Walk:
         if isinstance(marks, Mask) and marks.mark_reading is not None:
             yield f"mark reading of {marks.id}", marks.mark_reading, layer_keys(marks, "mark_reading")
 
-    def _shift(
-        self, label: str, of: str, size: SizeParts, axis: Axis, factor: float, place: Keys
-    ) -> Amounts:
+    def _shift(self, label: str, of: str, size: SizeParts, axis: Axis, factor: float, place: Keys) -> Amounts:
         """Amounts of an error of one layer on one axis that nothing else shares."""
         found: Amounts = []
         for kind, per_axis in size.parts():
@@ -229,10 +229,11 @@ def _side(mask: Mask, shape: Shape, axis: Axis) -> int:
     return -1 if mask.side == "back" and mirrored else 1
 
 
-def _assemble(flow: Flow, walk: Walk) -> Placement:
+def assemble(flow: Flow, walk: Walk) -> Placement:
+    """Return every layer's place from what a walk collected in all of them."""
     tables, places = walk.book.tables()
     index = {WAFER: 0} | {name: i + 1 for i, name in enumerate(flow.layers)}
-    patterns, edges = {}, {}
+    patterns, edges, read = {}, {}, {}
     for axis in AXES:
         shape = (len(index), tables[axis].size)
         frame, device, marks, edge = (np.zeros(shape) for _ in range(4))
@@ -256,5 +257,5 @@ def _assemble(flow: Flow, walk: Walk) -> Placement:
             device[i] = marks[i] = frame[i]
             add(device[i], name, "pattern")
             add(marks[i], name, "marks")
-        patterns[axis], edges[axis] = device, edge
-    return Placement(index, tuple(walk.book.sources), walk.book.keys, tables, patterns, edges)
+        patterns[axis], edges[axis], read[axis] = device, edge, marks
+    return Placement(index, tuple(walk.book.sources), walk.book.keys, tables, patterns, edges, read)
