@@ -1,5 +1,7 @@
 """``flowplan chain``: why two layers lie apart as they do."""
 
+from dataclasses import dataclass
+
 from flowplan.cli.session import known_layer, read_flow
 from flowplan.cli.streams import emit, emit_json
 from flowplan.cli.tables import Column, show_note, show_table
@@ -17,14 +19,24 @@ _SAME = 1e-9
 _EFFECTS = {"cancels": "gone", "shrinks": "smaller", "grows": "larger"}
 
 
-def chain(
-    name: str, variant: str | None, layers: tuple[str, str], axes: tuple[Axis, ...], *, as_json: bool
-) -> None:
+@dataclass(frozen=True, slots=True)
+class Question:
+    """Which flow, which two layers and which axes."""
+
+    name: str
+    variant: str | None
+    layers: tuple[str, str]
+    axes: tuple[Axis, ...]
+
+
+def chain(asked: Question, *, as_json: bool) -> None:
     """Explain the overlay of two layers of a flow, axis by axis."""
-    flow = read_flow(name, variant)
-    first, second = (known_layer(flow, layer, wafer=True) for layer in layers)
+    flow = read_flow(asked.name, asked.variant)
+    first, second = (known_layer(flow, layer, wafer=True) for layer in asked.layers)
     engine = Engine.of(flow)
-    found = [(explain(engine, first, second, axis), direct(engine, first, second, axis)) for axis in axes]
+    found = [
+        (explain(engine, first, second, axis), direct(engine, first, second, axis)) for axis in asked.axes
+    ]
     if as_json:
         records = [explanation_record(e, d, flow.unit) for e, d in found]
         emit_json(

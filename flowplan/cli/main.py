@@ -9,7 +9,7 @@ from typing import Annotated
 import typer
 
 from flowplan import __version__
-from flowplan.cli.options import AxisName, BasisName, Form, Order, TextOrJson, VerdictName
+from flowplan.cli.options import AxisName, BasisName, CompareForm, Form, Order, TextOrJson, VerdictName
 from flowplan.cli.session import FlowArgument, StrictOption, VariantOption, guarded
 from flowplan.cli.streams import emit
 
@@ -112,10 +112,59 @@ def chain(
     variant: VariantOption = None,
 ) -> None:
     """Explain the overlay of two layers: chain, sources, better reading."""
+    from flowplan.cli.chain import Question
     from flowplan.cli.chain import chain as work
 
-    axes = (axis.value,) if axis else ("x", "y")
-    work(flow, variant, (first, second), axes, as_json=form is TextOrJson.JSON)
+    asked = Question(flow, variant, (first, second), (axis.value,) if axis else ("x", "y"))
+    work(asked, as_json=form is TextOrJson.JSON)
+
+
+@app.command(epilog="Example: flowplan compare flows/cmos.yaml --self-align SD:GATE")
+@guarded
+def compare(
+    flows: Annotated[
+        list[str],
+        typer.Argument(
+            metavar="FLOW...", help="One file with variants, or two to four files.", show_default=False
+        ),
+    ],
+    variant: Annotated[
+        list[str] | None,
+        typer.Option(metavar="NAME", help="Only this variant; may be repeated.", show_default=False),
+    ] = None,
+    self_align: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--self-align",
+            metavar="FEATURE:PARENT[:x|y]",
+            help="Try a plan in which a mask's layer follows another by itself; may be repeated.",
+            show_default=False,
+        ),
+    ] = None,
+    form: Annotated[
+        CompareForm, typer.Option("--format", help="A table, or a format for other programs.")
+    ] = CompareForm.TABLE,
+    basis: Annotated[
+        BasisName | None, typer.Option(help="Judge every plan on this basis.", show_default=False)
+    ] = None,
+    every_row: Annotated[bool, typer.Option("--all", help="Show the margins that do not move, too.")] = False,
+    output: Annotated[
+        str | None, typer.Option("-o", "--output", metavar="FILE", help="Write an HTML page instead.")
+    ] = None,
+) -> None:
+    """Lay plans side by side: what changes, and what it does to each pair."""
+    from flowplan.cli.compare import Plans, run_compare
+
+    asked = Plans(
+        files=tuple(flows),
+        variants=tuple(variant or ()),
+        self_align=tuple(self_align or ()),
+        basis=basis.value if basis else None,
+        form=form.value,
+        every_row=every_row,
+        output=output,
+    )
+    run_compare(asked)
 
 
 @app.command(epilog="Example: flowplan tree flows/cmos.yaml -o tree.svg")

@@ -19,6 +19,14 @@ class Form(StrEnum):
     MARKDOWN = "markdown"
 
 
+class CompareForm(StrEnum):
+    """How a comparison is printed."""
+
+    TABLE = "table"
+    JSON = "json"
+    MARKDOWN = "markdown"
+
+
 class Order(StrEnum):
     """Order of the margins."""
 

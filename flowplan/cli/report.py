@@ -7,7 +7,7 @@ import typer
 from flowplan.cli.check import verdict_line, worst_line
 from flowplan.cli.output import refuse_flow_as_output, write_output
 from flowplan.cli.progress import Bar
-from flowplan.cli.session import STDIN, read_flow
+from flowplan.cli.session import STDIN, open_flow
 from flowplan.cli.status import Status
 from flowplan.cli.streams import printable, tell
 from flowplan.engine.analysis import analyse
@@ -17,13 +17,15 @@ def report(name: str, variant: str | None, output: str | None, *, strict: bool) 
     """Write the report of a flow and say where, and how the flow stands."""
     target = output or default_output(name)
     refuse_flow_as_output(target, name)
-    flow = read_flow(name, variant)
+    opened = open_flow(name, variant)
+    opened.show_warnings()
+    from flowplan.report.choosing import report_extras
     from flowplan.report.page import render_report
 
     with Bar("margins") as bar:
-        result = analyse(flow, progress=bar.step)
+        result = analyse(opened.flow, progress=bar.step)
     with Bar("report") as bar:
-        page = render_report(result, progress=bar.step)
+        page = render_report(result, progress=bar.step, extras=report_extras(result, opened.variants))
     write_output(target, page, flow=name)
     tell(f"wrote {target}")
     tell(verdict_line(result))

@@ -5,7 +5,7 @@ import os
 import sys
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Annotated, Any
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
@@ -15,6 +15,9 @@ from flowplan.cli.streams import printable, tell
 from flowplan.errors import Diagnostic, FlowError, FlowplanError, UsageError, nearest
 from flowplan.model.base import WAFER
 from flowplan.model.flow import Flow
+
+if TYPE_CHECKING:
+    from flowplan.files.reader import Loaded
 
 #: Set to anything to see the whole trace of an unforeseen fault.
 DEBUG = "FLOWPLAN_DEBUG"
@@ -35,10 +38,23 @@ StrictOption = Annotated[bool, typer.Option("--strict", help="Exit with status 1
 class Opened:
     """A flow that was read, its variants by name, and what was found on the way."""
 
+    loaded: "Loaded"
     flow: Flow
-    variants: dict[str, Flow]
-    warnings: tuple[Diagnostic, ...]
     text: str
+
+    @property
+    def warnings(self) -> tuple[Diagnostic, ...]:
+        """What was found that does not stop the work."""
+        return self.loaded.warnings
+
+    @property
+    def variants(self) -> dict[str, Flow]:
+        """The file's variants by name."""
+        return self.loaded.variants
+
+    def plan(self, variant: str) -> Flow:
+        """Return one of the file's variants; see `Loaded.plan`."""
+        return self.loaded.plan(variant)
 
     def show_warnings(self) -> None:
         """Print the warnings on standard error."""
@@ -78,7 +94,7 @@ def open_flow(name: str, variant: str | None = None) -> Opened:
         loaded = parse_bytes(raw, name)
     except FlowError as error:
         raise RefusedError(error, text) from None
-    return Opened(loaded.plan(variant), loaded.variants, loaded.warnings, text)
+    return Opened(loaded, loaded.plan(variant), text)
 
 
 def read_flow(name: str, variant: str | None = None) -> Flow:

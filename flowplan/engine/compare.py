@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Literal
 
 from flowplan.engine.analysis import Result
 from flowplan.engine.results import Entry, Verdict
@@ -10,6 +11,12 @@ from flowplan.model.differences import Difference, differences
 from flowplan.model.masks import SelfAligned
 
 Key = tuple[str, str, str, Axis]
+#: ``unsettled``: only the first plan settles it; ``rejudged``: only one of the two judges it.
+Status = Literal[
+    "same", "better", "worse", "settled", "unsettled", "appears", "disappears", "absent", "rejudged"
+]
+#: A change below this share of the drawn value, or of what the errors take, is rounding.
+_NOISE = 1e-9
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,7 +53,9 @@ class Row:
     entries : tuple of (Entry or None)
         One a plan; None where the plan does not have the pair.
     margins : tuple of (float or None)
-        Margins on each plan's own basis [nm].
+        Margins on each plan's own basis [nm]; None where nothing is judged.
+    overlays : tuple of (float or None)
+        What all errors of the residual take, the known offset included, on the same basis [nm].
     settled : tuple of bool
         Where a self-aligned step leaves no overlay error at all.
     """
@@ -56,26 +65,46 @@ class Row:
     axis: Axis
     entries: tuple[Entry | None, ...]
     margins: tuple[float | None, ...]
+    overlays: tuple[float | None, ...]
     settled: tuple[bool, ...]
 
     def change(self, plan: int) -> float | None:
-        """Return how much larger the margin is than in the first plan [nm]; None if not in both."""
-        first, other = self.margins[0], self.margins[plan]
-        return None if first is None or other is None else other - first
+        """Return how much is gained over the first plan [nm], below 0 when lost.
+
+        The margin where both plans judge the pair, else the smaller overlay where neither does; None
+        when the pair is not in both, or judged in one only.
+        """
+        for figures, sign in ((self.margins, 1), (self.overlays, -1)):
+            first, other = figures[0], figures[plan]
+            if (
+                first is not None
+                and other is not None
+                and (figures is self.margins or not self._judged(plan))
+            ):
+                return sign * (other - first)
+        return None
+
+    def _judged(self, plan: int) -> bool:
+        return self.margins[0] is not None or self.margins[plan] is not None
 
     def verdicts(self) -> tuple[Verdict | None, ...]:
         """Return the verdict in each plan."""
         return tuple(None if e is None else e.verdict for e in self.entries)
 
-    def status(self, plan: int) -> str:
-        """Return how the pair fared: appears, disappears, settled, better, worse or same."""
+    def status(self, plan: int) -> Status:
+        """Return how the pair fared against the first plan."""
         first, other = self.entries[0], self.entries[plan]
         if first is None or other is None:
-            return "appears" if other is not None else "disappears" if first is not None else "absent"
-        if self.settled[plan] and not self.settled[0]:
-            return "settled"
+            return "absent" if first is other else "appears" if first is None else "disappears"
+        if self.settled[plan] != self.settled[0]:
+            return "settled" if self.settled[plan] else "unsettled"
         change = self.change(plan)
-        if change is None or abs(change) <= 1e-9 * (abs(self.margins[0] or 0) + 1e-9):
+        if change is None:
+            return "rejudged"
+        largest = max(
+            abs(v) for v in (self.overlays[0], self.overlays[plan], first.drawn, 0.0) if v is not None
+        )
+        if abs(change) <= _NOISE * largest:
             return "same"
         return "better" if change > 0 else "worse"
 
@@ -125,14 +154,16 @@ def _key(entry: Entry) -> Key:
 
 def _row(key: Key, plans: Sequence[Plan], tables: Sequence[dict[Key, Entry]]) -> Row:
     entries = tuple(table.get(key) for table in tables)
-    margins = tuple(
-        None if e is None or e.margin is None else plan.result.margin(e)
-        for plan, e in zip(plans, entries, strict=True)
-    )
-    settled = tuple(
-        e is not None and is_settled(plan.result, e) for plan, e in zip(plans, entries, strict=True)
-    )
-    return Row(key[0], (key[1], key[2]), key[3], entries, margins, settled)
+    both = [*zip(plans, entries, strict=True)]
+    margins = tuple(None if e is None or e.margin is None else p.result.margin(e) for p, e in both)
+    overlays = tuple(None if e is None else taken(p.result, e) for p, e in both)
+    settled = tuple(e is not None and is_settled(p.result, e) for p, e in both)
+    return Row(key[0], (key[1], key[2]), key[3], entries, margins, overlays, settled)
+
+
+def taken(result: Result, entry: Entry) -> float:
+    """Return what all errors of an entry take on the flow's basis, known offset included [nm]."""
+    return entry.need.on(result.flow.basis) + abs(entry.residual.offset)
 
 
 def is_settled(result: Result, entry: Entry) -> bool:

@@ -9,10 +9,10 @@ from typing import TypeVar
 
 from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.flow import Flow
-from flowplan.model.masks import Follows, Mask, Reading, References, SelfAligned, Tones
+from flowplan.model.masks import Follows, Mask, Reading, References, SelfAligned, Tone, Tones
 from flowplan.model.pairs import AnyPair
 from flowplan.model.paths import Keys, Quoted, reading_keys
-from flowplan.model.terms import SizeParts
+from flowplan.model.terms import Size, SizeParts
 from flowplan.model.tools import Tool
 from flowplan.units import Quantity
 
@@ -39,17 +39,20 @@ def with_references(flow: Flow, choices: Mapping[tuple[str, Axis], Readings]) ->
 
     def changed(mask: Mask) -> Mask:
         per_axis = {axis: choices.get((mask.id, axis), mask.aligns_to.on(axis)) for axis in AXES}
-        references = References.model_construct(**per_axis)
+        references = References.model_construct(x=per_axis["x"], y=per_axis["y"])
         return mask if references == mask.aligns_to else mask.model_copy(update={"aligns_to": references})
 
     return flow.model_copy(update={"masks": tuple(changed(mask) for mask in flow.masks)})
 
 
-def self_aligned(flow: Flow, layer: str, parent: str, axes: Iterable[Axis] = AXES) -> Flow:
+def self_aligned(
+    flow: Flow, layer: str, parent: str, axes: Iterable[Axis] = AXES, *, tone: Tone = "same"
+) -> Flow:
     """Return the flow with a mask's layer made by a self-aligned step instead.
 
     Along axes not named the feature follows what the mask read first there, so that a step can be
-    self-aligned in one direction only.
+    self-aligned in one direction only. Each edge keeps its own variation; half of a CD, since that is
+    what moves one edge.
 
     Parameters
     ----------
@@ -61,6 +64,8 @@ def self_aligned(flow: Flow, layer: str, parent: str, axes: Iterable[Axis] = AXE
         The layer whose pattern it follows.
     axes : iterable of {'x', 'y'}
         Where it follows `parent`.
+    tone : {'same', 'opposite'}
+        Whether it grows with the parent, or where the parent shrinks.
 
     Returns
     -------
@@ -84,8 +89,8 @@ def self_aligned(flow: Flow, layer: str, parent: str, axes: Iterable[Axis] = AXE
         owner=mask.owner,
         why=mask.why,
         follows=Follows(**follows),
-        tone=Tones(x="same", y="same"),
-        edge=mask.edge,
+        tone=Tones(x=tone, y=tone),
+        edge=mask.edge if mask.cd is None else _halved(mask.cd),
     )
     return flow.model_copy(
         update={
@@ -93,6 +98,14 @@ def self_aligned(flow: Flow, layer: str, parent: str, axes: Iterable[Axis] = AXE
             "self_aligned": (*flow.self_aligned, feature),
         }
     )
+
+
+def _halved(size: Size) -> Size:
+    parts = {
+        kind: PerAxis(**{a: Quantity(given.on(a).value / 2, given.on(a).unit) for a in AXES})
+        for kind, given in size.parts()
+    }
+    return Size(**parts)
 
 
 def with_drawn(flow: Flow, name: str, axis: Axis, drawn_nm: float) -> Flow:
@@ -176,7 +189,7 @@ def _in_mask(mask: Mask, quoted: Quoted, size: Quantity) -> Mask:
         axis: tuple(_in_reading(mask, reading, axis, quoted, size) for reading in mask.aligns_to.on(axis))
         for axis in AXES
     }
-    return mask.model_copy(update={"aligns_to": References.model_construct(**per_axis)})
+    return mask.model_copy(update={"aligns_to": References.model_construct(x=per_axis["x"], y=per_axis["y"])})
 
 
 def _in_reading(mask: Mask, reading: Reading, axis: Axis, quoted: Quoted, size: Quantity) -> Reading:
@@ -189,4 +202,4 @@ def _in_reading(mask: Mask, reading: Reading, axis: Axis, quoted: Quoted, size: 
 def _resized(old: _AnySize, quoted: Quoted, size: Quantity) -> _AnySize:
     before: PerAxis = getattr(old, quoted.kind)
     after = {axis: size if axis in quoted.axes else before.on(axis) for axis in AXES}
-    return old.model_copy(update={quoted.kind: PerAxis.model_construct(**after)})
+    return old.model_copy(update={quoted.kind: PerAxis.model_construct(x=after["x"], y=after["y"])})

@@ -4,7 +4,7 @@ import copy
 from typing import Any
 
 from flowplan.model.flow import Flow
-from flowplan.model.variants import KEYED_LISTS
+from flowplan.model.variants import AFTER, KEYED_LISTS
 
 DIALECT = "https://json-schema.org/draft/2020-12/schema"
 
@@ -39,6 +39,11 @@ def _describe_variants(schema: Schema) -> None:
     for part, models in _CHANGED.items():
         changes = [_in_parts(schema["$defs"][model], KEYED_LISTS.get(part)) for model in models]
         one = _merged(changes)
+        if part == "masks":
+            one["properties"][AFTER] = {
+                "type": "string",
+                "description": "The mask that a new mask comes after.",
+            }
         entries: list[Schema] = [{"type": "object", "additionalProperties": one}]
         if part in KEYED_LISTS:
             entries.append({"type": "array", "items": one})
@@ -58,8 +63,7 @@ def _in_parts(model: Schema, key: str | None) -> Schema:
     changed = copy.deepcopy(model)
     changed.pop("required", None)
     changed["properties"] = {
-        name: part if name == key else _or_null(part)
-        for name, part in changed["properties"].items()
+        name: part if name == key else _or_null(part) for name, part in changed["properties"].items()
     }
     return changed
 

@@ -13,12 +13,14 @@ from typing import Any
 from pydantic import Field
 
 from flowplan.errors import Diagnostic, Path, nearest
-from flowplan.model.base import Described, Id
+from flowplan.model.base import WAFER, Described, Id
 
 Data = dict[str, Any]
 
 #: Parts of the file that are lists of entries with a key of their own.
 KEYED_LISTS = {"masks": "id", "self_aligned": "id", "pairs": "name"}
+#: Where a mask that only a variant has comes in the process.
+AFTER = "after"
 #: Parts of the file that are mappings from an id to an entry.
 MAPPINGS = ("tools", "split_layers")
 
@@ -32,7 +34,12 @@ class Variant(Described):
     note: str = Field("", description="What it tries, in a sentence; shown where plans are compared.")
     drop: tuple[Id, ...] = Field((), description="Ids, and names of pairs, that this variant leaves out.")
     tools: Any = Field(None, description=_PART.format("tools", "id"))
-    masks: Any = Field(None, description=_PART.format("masks", "id"))
+    masks: Any = Field(
+        None,
+        description=_PART.format("masks", "id")
+        + " A mask that the base does not have says `after:` which mask it is exposed; it takes the place of "
+        "a self-aligned feature of the same id.",
+    )
     self_aligned: Any = Field(
         None,
         description=_PART.format("self_aligned", "id")
@@ -121,12 +128,17 @@ class _Merge:
 
     def run(self) -> Merged:
         self._drop()
+        entries = {part: [*self._entries(part, self.variant.get(part))] for part in KEYED_LISTS}
+        # Rows come and go before any is changed: the provenance of a change names its row by number.
+        for name, _, _ in entries["self_aligned"]:
+            self._remove("masks", name)
+        entries["masks"] = [e for e in entries["masks"] if not self._is_added_mask(*e)]
         for part, value in self.variant.items():
             if part in OWN_KEYS or part not in Variant.model_fields:
                 continue
             if part in KEYED_LISTS:
-                for name, changes, place in self._entries(part, value):
-                    self._change_entry(part, name, changes, place)
+                for entry in entries[part]:
+                    self._change_entry(part, *entry)
             else:
                 self._lay_over(self.data, part, value, (part,), (*self.at, part))
         return Merged(self.variant, self.data, self.provenance, tuple(self.findings))
@@ -178,18 +190,33 @@ class _Merge:
         return True
 
     def _change_entry(self, part: str, name: str, changes: object, place: Path) -> None:
-        if part == "self_aligned":
-            # A step that becomes self-aligned keeps its id, so that pairs keep pointing at it.
-            self._remove("masks", name)
         names = self._names(part)
         if name in names:
             at = names.index(name)
             self._lay_over(self._list(part), at, changes, (part, at), place)
         elif part == "masks":
             message = f"the variant changes {name!r}, which is not a mask of the flow"
-            self._refuse("FP301", message, nearest(name, [n for n in names if n]), place)
+            hint = nearest(name, [n for n in names if n]) + "; a new mask says `after:` which one it comes"
+            self._refuse("FP301", message, hint, place)
         else:
             self._append(part, name, changes, place)
+
+    def _is_added_mask(self, name: str, mask: object, place: Path) -> bool:
+        """Add a mask that says where it belongs; it takes the place of a feature of the same id."""
+        names = self._names("masks")
+        if name in names or not isinstance(mask, dict) or AFTER not in mask:
+            return False
+        before = [WAFER, *names]
+        if mask[AFTER] not in before:
+            message = f"{name!r} comes after {mask[AFTER]!r}, which is not a mask of the flow"
+            self._refuse("FP301", message, nearest(str(mask[AFTER]), before), (*place, AFTER))
+            return True
+        at = before.index(mask[AFTER])
+        added = {"id": name} | {k: v for k, v in mask.items() if k != AFTER}
+        self._list("masks").insert(at, copy.deepcopy(added))
+        self.provenance.rows["masks"].insert(at, place)
+        self._remove("self_aligned", name)
+        return True
 
     def _append(self, part: str, name: str, entry: object, place: Path) -> None:
         if self.data.get(part) is None:

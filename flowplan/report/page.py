@@ -6,12 +6,13 @@ from collections.abc import Callable
 
 from flowplan.engine.analysis import Result
 from flowplan.files.resources import resource_folder
-from flowplan.report.view import report_view
+from flowplan.report.comparison import ComparisonText
+from flowplan.report.view import Extras, package_version, report_view
 
 Progress = Callable[[int, int], None]
 
 
-def render_report(result: Result, progress: Progress | None = None) -> str:
+def render_report(result: Result, progress: Progress | None = None, extras: Extras | None = None) -> str:
     """Return the report of an analysis.
 
     Parameters
@@ -20,6 +21,8 @@ def render_report(result: Result, progress: Progress | None = None) -> str:
         An analysis.
     progress : callable, optional
         Called with (pairs done, pairs in all).
+    extras : Extras, optional
+        What helps to choose among plans; shown as sections of their own.
 
     Returns
     -------
@@ -27,6 +30,21 @@ def render_report(result: Result, progress: Progress | None = None) -> str:
         One HTML page with its style sheet, script and drawings inside. A content security policy
         allows exactly these and no request to anywhere; all text of the flow is escaped.
     """
+    return _render("report.html.j2", view=report_view(result, progress, extras))
+
+
+def render_comparison(text: ComparisonText) -> str:
+    """Return plans side by side as one HTML page, made like the report.
+
+    Parameters
+    ----------
+    text : ComparisonText
+        As `comparison_text` returns it.
+    """
+    return _render("compare.html.j2", has_script=False, comparison=text, version=package_version())
+
+
+def _render(template: str, *, has_script: bool = True, **values: object) -> str:
     from jinja2 import Environment, FileSystemLoader, StrictUndefined
 
     folder = resource_folder("templates")
@@ -38,13 +56,10 @@ def render_report(result: Result, progress: Progress | None = None) -> str:
         lstrip_blocks=True,
     )
     style = (folder / "report.css").read_text(encoding="utf-8")
-    script = (folder / "report.js").read_text(encoding="utf-8")
-    return environment.get_template("report.html.j2").render(
-        view=report_view(result, progress),
-        style=style,
-        script=script,
-        policy=content_policy(style, script),
-    )
+    script = (folder / "report.js").read_text(encoding="utf-8") if has_script else ""
+    policy = content_policy(style, script)
+    page = environment.get_template(template)
+    return page.render(values, style=style, script=script, policy=policy)
 
 
 def content_policy(style: str, script: str) -> str:
@@ -53,7 +68,7 @@ def content_policy(style: str, script: str) -> str:
     Parameters
     ----------
     style, script : str
-        The exact text inside the two elements.
+        The exact text inside the two elements; empty where there is none.
     """
     rules = {
         "default-src": "'none'",
@@ -67,5 +82,7 @@ def content_policy(style: str, script: str) -> str:
 
 
 def _allow(text: str) -> str:
+    if not text:
+        return "'none'"
     digest = base64.b64encode(hashlib.sha256(text.encode()).digest()).decode()
     return f"'sha256-{digest}'"

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 from importlib.metadata import PackageNotFoundError, version
 
 from flowplan.engine.analysis import Result
+from flowplan.report.comparison import ComparisonText
 from flowplan.report.viewanswer import AnswerView, answer_view
 from flowplan.report.viewbase import Base, plain
 from flowplan.report.viewbudget import BudgetBook
@@ -27,11 +28,19 @@ class HeadView:
 
     flow: str
     revision: str
+    variant: str
     unit: str
     confidence: str
     basis: str
     remarks: tuple[tuple[str, str], ...]
     version: str
+
+
+@dataclass(frozen=True, slots=True)
+class Extras:
+    """What helps to choose among plans; None where there is nothing to show."""
+
+    comparison: ComparisonText | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,9 +60,10 @@ class ReportView:
     mask_terms: tuple[MaskTerm, ...]
     features: tuple[FeatureView, ...]
     notes: NotesView
+    extras: Extras
 
 
-def report_view(result: Result, progress: Progress | None = None) -> ReportView:
+def report_view(result: Result, progress: Progress | None = None, extras: Extras | None = None) -> ReportView:
     """Return the view of a result.
 
     Parameters
@@ -62,6 +72,8 @@ def report_view(result: Result, progress: Progress | None = None) -> ReportView:
         An analysis.
     progress : callable, optional
         Called with (pairs done, pairs in all).
+    extras : Extras, optional
+        What helps to choose among plans.
     """
     base = Base(result)
     book = HopBook(base)
@@ -80,6 +92,7 @@ def report_view(result: Result, progress: Progress | None = None) -> ReportView:
         mask_terms=mask_terms_view(base),
         features=features_view(base),
         notes=notes_view(base),
+        extras=extras or Extras(),
     )
 
 
@@ -88,15 +101,16 @@ def _head(base: Base) -> HeadView:
     return HeadView(
         flow.flow,
         flow.revision,
+        flow.variant or "",
         flow.unit,
         plain(flow.confidence),
         flow.basis,
         remarks_of(flow),
-        _version(),
+        package_version(),
     )
 
 
-def _version() -> str:
+def package_version() -> str:
     """Return the version that the page names; empty in a source tree that is not installed."""
     try:
         return version("flowplan")
