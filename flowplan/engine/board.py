@@ -49,7 +49,7 @@ class Board:
     def of(cls, flow: Flow, placement: Placement) -> "Board":
         """Return the board of a placed flow."""
         every = rows_of(flow, flow.pairs)
-        size = {}
+        size: dict[tuple[str, str, str, Axis], tuple[float, float]] = {}
         for axis in AXES:
             on_axis = tuple(row for row in every if row.axis == axis)
             res = residuals(flow, placement, on_axis, axis)
