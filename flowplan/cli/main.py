@@ -9,7 +9,16 @@ from typing import Annotated
 import typer
 
 from flowplan import __version__
-from flowplan.cli.options import AxisName, BasisName, CompareForm, Form, Order, TextOrJson, VerdictName
+from flowplan.cli.options import (
+    AxisName,
+    BasisName,
+    CompareForm,
+    Form,
+    GoalName,
+    Order,
+    TextOrJson,
+    VerdictName,
+)
 from flowplan.cli.session import FlowArgument, StrictOption, VariantOption, guarded
 from flowplan.cli.streams import emit
 
@@ -165,6 +174,68 @@ def compare(
         output=output,
     )
     run_compare(asked)
+
+
+@app.command(epilog="Example: flowplan propose flows/cmos.yaml --free-all --changes 2 -o better.yaml")
+@guarded
+def propose(
+    flow: FlowArgument,
+    goal: Annotated[
+        GoalName, typer.Option(help="The smallest margin, the fewest failing pairs, or the yield.")
+    ] = GoalName.WORST,
+    free: Annotated[
+        list[str] | None,
+        typer.Option(
+            metavar="ID", help="A mask that may read any earlier layer; may be repeated.", show_default=False
+        ),
+    ] = None,
+    free_all: Annotated[
+        bool, typer.Option("--free-all", help="Every mask may read any earlier layer.")
+    ] = False,
+    pin: Annotated[
+        list[str] | None,
+        typer.Option(
+            metavar="ID", help="A mask that keeps what it reads; may be repeated.", show_default=False
+        ),
+    ] = None,
+    same_reference: Annotated[
+        bool, typer.Option("--same-reference", help="x and y of a mask come from one candidate.")
+    ] = False,
+    changes: Annotated[
+        int | None, typer.Option(metavar="N", min=0, help="Change at most N masks.", show_default=False)
+    ] = None,
+    rungs: Annotated[bool, typer.Option("--ladder", help="The best plan for 0, 1, 2, ... changes.")] = False,
+    time_limit: Annotated[
+        float | None,
+        typer.Option("--time-limit", metavar="S", min=0, help="Stop after S seconds.", show_default=False),
+    ] = None,
+    form: Annotated[
+        CompareForm, typer.Option("--format", help="A table, or a format for other programs.")
+    ] = CompareForm.TABLE,
+    output: Annotated[
+        str | None,
+        typer.Option("-o", "--output", metavar="FILE", help="Write the flow with the new references."),
+    ] = None,
+    strict: StrictOption = False,
+    variant: VariantOption = None,
+) -> None:
+    """Find the best references, with proof; Ctrl-C keeps the best so far."""
+    from flowplan.cli.propose import Wish, run_propose
+
+    wish = Wish(
+        goal=goal.value,
+        free=tuple(free or ()),
+        free_all=free_all,
+        pin=tuple(pin or ()),
+        same_reference=same_reference,
+        changes=changes,
+        time_limit=time_limit,
+        rungs=rungs,
+        form=form.value,
+        output=output,
+        strict=strict,
+    )
+    run_propose(flow, variant, wish)
 
 
 @app.command(epilog="Example: flowplan tree flows/cmos.yaml -o tree.svg")

@@ -19,8 +19,16 @@ class Form(StrEnum):
     MARKDOWN = "markdown"
 
 
+class GoalName(StrEnum):
+    """What the best plan is best at."""
+
+    WORST = "worst"
+    FAILS = "fails"
+    YIELD = "yield"
+
+
 class CompareForm(StrEnum):
-    """How a comparison is printed."""
+    """How a comparison or a proposal is printed."""
 
     TABLE = "table"
     JSON = "json"

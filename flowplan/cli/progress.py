@@ -32,13 +32,13 @@ class Bar:
         if self._shown:
             self._shown[0].stop()
 
-    def step(self, done: int, total: int) -> None:
-        """Note that `done` of `total` are done."""
+    def step(self, done: float, total: float, note: str = "") -> None:
+        """Note that `done` of `total` are done, and what there is to say about it."""
         if self._shown is None and sys.stderr.isatty() and time.monotonic() - self._begin > _MOMENT:
             self._shown = self._start()
         if self._shown:
             bar, task = self._shown
-            bar.update(task, completed=done, total=total)
+            bar.update(task, completed=done, total=total, description=f"{self._title}{note}")
 
     def _start(self) -> "tuple[Progress, TaskID]":
         from rich.console import Console
