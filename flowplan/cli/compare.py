@@ -136,7 +136,7 @@ def _self_aligned(flow: Flow, text: str) -> Named:
     if faults:
         raise UsageError([Diagnostic("FP602", f"--self-align {text}: {d.message}", d.hint) for d in faults])
     along = "" if len(axes) == 2 else f" along {axes[0]}"
-    note = "no exposure of its own; same tone, no edge error of its own unless the mask had `edge`"
+    note = "no exposure of its own; it grows with what it follows and keeps its own edge variation"
     return Named(f"{feature} self-aligned to {parent}{along}", note, changed)
 
 

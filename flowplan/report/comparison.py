@@ -1,7 +1,7 @@
 """Plans side by side as records for programs and as text for people."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from string import ascii_uppercase
 
 from flowplan.engine.compare import Comparison, Plan, Row
@@ -155,13 +155,26 @@ def _plan(
         worst=_NONE if worst is None else figures.text(result.margin(worst)),
         worst_at="nothing is judged" if worst is None else f"{worst.pair.name}, {worst.axis}",
         worst_change=change,
-        changes=tuple(_change(difference) for difference in plan.changes),
+        changes=_changes(plan.changes),
         settles=tuple(_label(row) for row in comparison.rows if index and row.status(index) == "settled"),
     )
 
 
 def _label(row: Row) -> str:
     return f"{row.pair} ({row.axis})"
+
+
+def _changes(differences: Sequence[Difference]) -> tuple[ChangeText, ...]:
+    """Return the changes in words, one where both axes change alike."""
+    found: list[ChangeText] = []
+    for text in map(_change, differences):
+        last = found[-1] if found else None
+        both = text.what.removesuffix(".y")
+        if last == replace(text, what=f"{both}.x") and both != text.what:
+            found[-1] = replace(text, what=both)
+        else:
+            found.append(text)
+    return tuple(found)
 
 
 def _change(difference: Difference) -> ChangeText:
