@@ -89,9 +89,10 @@ def _first_lowest(margins: FloatArray) -> IntArray:
     return np.asarray((margins <= lowest + tie).argmax(axis=1))
 
 
-def select(res: Residuals, part: slice) -> Residuals:
+def select(res: Residuals, part: slice | IntArray) -> Residuals:
     """Return some of the rows."""
-    return Residuals(res.rows[part], res.overlay[part], res.edges[part], res.drawn[part], res.keep[part])
+    rows = res.rows[part] if isinstance(part, slice) else tuple(res.rows[i] for i in part)
+    return Residuals(rows, res.overlay[part], res.edges[part], res.drawn[part], res.keep[part])
 
 
 @dataclass(frozen=True, slots=True)

@@ -107,6 +107,11 @@ def place(flow: Flow, *, apart: bool = False) -> Placement:
     Placement
         Amounts of every source in every layer.
     """
+    return assemble(flow, walked(flow, apart=apart))
+
+
+def walked(flow: Flow, *, apart: bool = False) -> "Walk":
+    """Return what enters every layer of a flow, collected; arguments as for `place`."""
     walk = Walk(flow, SourceBook(apart))
     for layer in flow.layers.values():
         walk.collect_edge(layer)
@@ -114,7 +119,7 @@ def place(flow: Flow, *, apart: bool = False) -> Placement:
             walk.collect_terms(layer)
             for axis in AXES:
                 walk.parts[layer.id, "read", axis] = walk.reads(layer, layer.aligns_to.weighted(axis), axis)
-    return assemble(flow, walk)
+    return walk
 
 
 class Walk:
