@@ -21,6 +21,7 @@ from flowplan.model.terms import Kind, Shape
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
+BoolArray = NDArray[np.bool_]
 
 #: Basis functions of position: constant, field x, field y, wafer x, wafer y (field centre + site).
 N_BASIS = 5

@@ -8,6 +8,7 @@ are kept as they are: as signed amounts at every site.
 
 from collections import defaultdict
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -90,7 +91,7 @@ class Reads:
     count: IntArray
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class AxisAtoms:
     """One axis of a flow with all its options.
 
@@ -132,6 +133,12 @@ class AxisAtoms:
     def n_sites(self) -> int:
         """Number of sites."""
         return self.layer.sizes.shape[1]
+
+    @cached_property
+    def has_bounds(self) -> bool:
+        """Whether anything but edges and shared sources is bounded."""
+        placed = (self.layer, self.pattern, self.marks, self.reads.parts)
+        return any(bool(parts.sizes[..., BOUND].any()) for parts in placed)
 
     def need(self, sizes: FloatArray) -> FloatArray:
         """Return what errors of these variances, bounds and linear sums take on the basis [nm]."""

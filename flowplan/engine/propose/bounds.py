@@ -18,12 +18,10 @@ import numpy as np
 
 from flowplan.engine.propose.atoms import BOUND, LINEAR, VARIANCE, AxisAtoms, Parts
 from flowplan.engine.propose.exact import log_chance, settled, tails
-from flowplan.engine.sources import FloatArray, IntArray
+from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Sites at which margins are bounded; a few are enough, the exact values see all.
 _SITES = 4
-#: Ways whose lengths differ by less than this share are equally long.
-_NOISE = 1e-12
 
 
 @dataclass(slots=True)
@@ -67,7 +65,7 @@ class AxisBounds:
     def __init__(self, axis: AxisAtoms, *, as_yield: bool) -> None:
         self.axis, self.as_yield = axis, as_yield
         self.sites = np.arange(axis.n_sites) if as_yield else _spread(axis.n_sites)
-        self.kinds = (VARIANCE, BOUND, LINEAR) if axis.basis == "linear" else (VARIANCE, BOUND)
+        self.kinds = [VARIANCE] + [BOUND] * axis.has_bounds + [LINEAR] * (axis.basis == "linear")
         self.power = np.tile([2 if kind == VARIANCE else 1 for kind in self.kinds], len(self.sites))
         self.layer, self.pattern, self.marks = (self._flat(p) for p in (axis.layer, axis.pattern, axis.marks))
         self.reads = self._flat(axis.reads.parts)
@@ -85,7 +83,7 @@ class AxisBounds:
     @property
     def is_loose(self) -> bool:
         """Whether a decided way is still only bounded, not exact."""
-        return self.as_yield or bool(self.averaged.any())
+        return self.as_yield or len(self.sites) < self.axis.n_sites or bool(self.averaged.any())
 
     @property
     def floats_per_node(self) -> int:
@@ -96,12 +94,12 @@ class AxisBounds:
 
     def _flat(self, parts: Parts) -> Parts:
         """Keep the sizes and sites that count and lay them side by side."""
-        sizes = parts.sizes[..., self.sites, :][..., list(self.kinds)]
+        sizes = parts.sizes[..., self.sites, :][..., self.kinds]
         signed = parts.signed[..., self.sites, :]
         lead = sizes.shape[:-2]
         return Parts(sizes.reshape(*lead, -1), signed.reshape(*lead, -1))
 
-    def values(self, allowed: FloatArray) -> FloatArray:
+    def values(self, allowed: BoolArray) -> FloatArray:
         """Return what every pair reaches at best with each option of its later mask.
 
         Parameters
@@ -114,7 +112,7 @@ class AxisBounds:
         ndarray, shape (n_nodes, n_rows, n_options)
             Upper bounds of margins [nm] or of logarithms; -inf for options that are not allowed.
         """
-        _, sizes, low, high = self._walk(allowed)
+        sizes, low, high = self._walk(allowed)
         sizes = sizes + (self.pattern.sizes[self.late] + self.pattern.sizes[self.early])[:, None]
         same = self.late == self.early
         sizes[:, same] = 0.0
@@ -127,67 +125,7 @@ class AxisBounds:
         ok = allowed[:, self.late]
         return np.where(ok, found, -np.inf)
 
-    def departures(self, allowed: FloatArray, plans: IntArray, rows: IntArray) -> list[int | None]:
-        """Return for each node the first mask at which a pair's best way leaves the plan.
-
-        Parameters
-        ----------
-        allowed : ndarray of bool, shape (n_nodes, n_masks, n_options)
-            The options left to each mask.
-        plans : ndarray of int, shape (n_nodes, n_masks)
-            A plan of each node.
-        rows : ndarray of int, shape (n_nodes,)
-            One pair of each node.
-
-        Returns
-        -------
-        list of int or None
-            A mask with more than one option, or None where the way is decided.
-        """
-        tables = self._walk(allowed)[0]
-        nodes = zip(allowed, plans, rows, strict=True)
-        return [self._departure(tables, k, *node) for k, node in enumerate(nodes)]
-
-    def _departure(self, t: _Tables, node: int, allowed: FloatArray, plan: IntArray, row: int) -> int | None:
-        is_open = allowed.sum(axis=1) > 1
-        late, early = int(self.late[row]), int(self.early[row])
-        to_frame, undecided = True, None
-        while late != early:
-            option = int(plan[late])
-            if is_open[late]:
-                cost = self._costs(t.to_frame if to_frame else t.to_marks, node, late, early)
-                if undecided is not None or late != self.late[row]:
-                    cost = np.where(allowed[late], cost, np.inf)
-                    if cost[option] > cost.min() * (1 + _NOISE):
-                        return late
-                undecided = late if undecided is None else undecided
-            if self.axis.reads.weights[late, option, 1:].any():
-                return undecided if undecided is not None else self._ancestor(is_open, plan, late, early)
-            reference = int(self.axis.reads.masks[late, option, 0])
-            if to_frame and reference >= early:
-                late = reference
-                continue
-            late, early, to_frame = max(early, reference), min(early, reference), False
-        return undecided
-
-    def _costs(self, table: FloatArray, node: int, late: int, early: int) -> FloatArray:
-        """Sizes of a way by each option of its later mask, added up as a rough length."""
-        masks, weights = self.axis.reads.masks[late], self.axis.reads.weights[late]
-        ways = (weights[..., None] ** self.power * table[node, masks, early]).sum(axis=1)
-        return np.asarray((ways + self.reads.sizes[late]).sum(axis=1))
-
-    def _ancestor(self, is_open: FloatArray, plan: IntArray, *masks: int) -> int | None:
-        """Return the latest undecided mask from which one of these inherits."""
-        waiting, seen = list(masks), set[int]()
-        while waiting:
-            mask = waiting.pop()
-            if mask not in seen:
-                seen.add(mask)
-                used = self.axis.reads.weights[mask, plan[mask]] > 0
-                waiting += self.axis.reads.masks[mask, plan[mask]][used].tolist()
-        return max((m for m in seen if is_open[m]), default=None)
-
-    def _walk(self, allowed: FloatArray) -> tuple["_Tables", FloatArray, FloatArray, FloatArray]:
+    def _walk(self, allowed: BoolArray) -> tuple[FloatArray, FloatArray, FloatArray]:
         """Fill the tables in process order; return the rows' overlays by option of the later mask."""
         nodes, n, width = allowed.shape
         t = _Tables.empty(nodes, n, len(self.power), self.n_signed if self.is_signed else 0)
@@ -211,9 +149,9 @@ class AxisBounds:
             t.to_frame[:, i, i] = self.marks.sizes[i]
             if self.is_signed:
                 t.low_frame[:, i, i] = t.high_frame[:, i, i] = self.marks.signed[i]
-        return t, sizes, low, high
+        return sizes, low, high
 
-    def _least_own(self, allowed: FloatArray) -> FloatArray:
+    def _least_own(self, allowed: BoolArray) -> FloatArray:
         """Least that each mask and its marks add wherever they take part, shape (n_nodes, n_masks, n_sizes)."""
         reads = np.where(allowed[..., None], self.reads.sizes, np.inf).min(axis=2)
         return np.asarray(self.layer.sizes + self.marks.sizes + reads)
@@ -241,7 +179,7 @@ class AxisBounds:
     def _signed(
         self,
         t: _Tables,
-        ok: FloatArray,
+        ok: BoolArray,
         i: int,
         count: int,
         rows: IntArray,
@@ -271,7 +209,7 @@ class AxisBounds:
         """Turn least sizes and ranges into upper bounds of what a pair gets."""
         axis, n_sites = self.axis, len(self.sites)
         full = np.zeros((*sizes.shape[:-1], n_sites, 3))
-        full[..., list(self.kinds)] = sizes.reshape(*sizes.shape[:-1], n_sites, -1)
+        full[..., self.kinds] = sizes.reshape(*sizes.shape[:-1], n_sites, -1)
         full += axis.rows.edges[:, None, None]
         low = low.reshape(*low.shape[:-1], n_sites, -1)
         high = high.reshape(*high.shape[:-1], n_sites, -1)

@@ -80,9 +80,11 @@ def _residuals(axis: AxisAtoms, plans: IntArray) -> tuple[FloatArray, FloatArray
         (frames[:, second] - frames[:, first], own),
         (marks[:, second] - marks[:, first], axis.marks.sizes),
     ):
-        size = np.abs(coefficient)
-        total[..., VARIANCE] += size**2 @ what[..., VARIANCE]
-        total[..., BOUND:] += _times(size, what[..., BOUND:])
+        if not what.any():
+            continue
+        total[..., VARIANCE] += coefficient**2 @ what[..., VARIANCE]
+        if axis.basis == "linear" or axis.has_bounds:
+            total[..., BOUND:] += _times(np.abs(coefficient), what[..., BOUND:])
     differ = (first != second)[:, None, None]
     total += np.where(differ, axis.pattern.sizes[first] + axis.pattern.sizes[second], 0.0)
     placed = signed + axis.pattern.signed
