@@ -238,6 +238,53 @@ def propose(
     run_propose(flow, variant, wish)
 
 
+@app.command(epilog="Example: flowplan remedies flows/cmos.yaml --pair 'contact inside active'")
+@guarded
+def remedies(
+    flow: FlowArgument,
+    pair: Annotated[
+        list[str] | None,
+        typer.Option(metavar="NAME", help="Only this pair; may be repeated.", show_default=False),
+    ] = None,
+    every: Annotated[bool, typer.Option("--all", help="Pairs that pass as well.")] = False,
+    each: Annotated[int, typer.Option(metavar="N", min=1, help="Show the best N of each kind.")] = 2,
+    form: Annotated[
+        CompareForm, typer.Option("--format", help="A table, or a format for other programs.")
+    ] = CompareForm.TABLE,
+    variant: VariantOption = None,
+) -> None:
+    """Rank what to do about each pair that fails or is tight."""
+    from flowplan.cli.remedies import RemedyChoice
+    from flowplan.cli.remedies import remedies as work
+
+    work(flow, variant, RemedyChoice(tuple(pair or ()), every, each, form))
+
+
+@app.command(epilog="Example: flowplan levers flows/logic_backend.yaml --size tools.immersion")
+@guarded
+def levers(
+    flow: FlowArgument,
+    size: Annotated[
+        list[str] | None,
+        typer.Option(
+            metavar="PATH",
+            help="Only this size, or all under this beginning of a path; may be repeated.",
+            show_default=False,
+        ),
+    ] = None,
+    every: Annotated[bool, typer.Option("--all", help="Sizes worth nothing by themselves as well.")] = False,
+    form: Annotated[
+        CompareForm, typer.Option("--format", help="A table, or a format for other programs.")
+    ] = CompareForm.TABLE,
+    variant: VariantOption = None,
+) -> None:
+    """Say what each quoted size is worth, and how large it may be."""
+    from flowplan.cli.levers import LeverChoice
+    from flowplan.cli.levers import levers as work
+
+    work(flow, variant, LeverChoice(tuple(size or ()), every, form))
+
+
 @app.command(epilog="Example: flowplan tree flows/cmos.yaml -o tree.svg")
 @guarded
 def tree(
