@@ -5,7 +5,7 @@ import numpy as np
 from flowplan.engine.propose.atoms import AxisAtoms
 from flowplan.engine.propose.bounds import AxisBounds
 from flowplan.engine.propose.exact import values
-from flowplan.engine.propose.score import Groups, Scale
+from flowplan.engine.propose.score import Scale
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 from flowplan.model.base import Axis
 from flowplan.model.candidates import Choice
@@ -42,8 +42,7 @@ class Block:
         self.variables = {axis.axis: self._variables(axis.axis) for axis in atoms}
         self.count = np.array([len(choice.options) for choice in choices], dtype=np.int64)
         self.width = int(self.count.max())
-        self.variable = np.concatenate([self.variables[b.axis.axis][b.late - 1] for b in self.bounds])
-        self.groups = Groups(self.variable, scale)
+        self.n_rows = sum(len(axis.rows.room) for axis in atoms)
         n = atoms[0].n_masks
         self.step = max(1, _MOST_FLOATS // max(1, sum(b.floats_per_node for b in self.bounds)))
         rows = sum(len(axis.rows.room) * axis.n_sites for axis in atoms)
@@ -96,28 +95,31 @@ class Block:
         """Return for each mask whether any of its variables is flagged."""
         return np.asarray(np.logical_or.reduceat(flags, self._firsts, axis=1))
 
-    def reach(self, allowed: BoolArray) -> FloatArray:
-        """Return what each pair reaches at best with each option of its later mask.
+    def reach(self, allowed: BoolArray) -> tuple[FloatArray, IntArray]:
+        """Return what each pair reaches at best with each option of its pivot.
 
         Returns
         -------
-        ndarray, shape (n_nodes, n_rows, n_options)
+        values : ndarray, shape (n_nodes, n_rows, n_options)
             Upper bounds, -inf for options that are not allowed; exact where all that a pair rests on
             is decided.
+        pivots : ndarray of int, shape (n_nodes, n_rows)
+            The variable of each pair's pivot.
         """
         parts = [self._reach(allowed[i : i + self.step]) for i in range(0, len(allowed), self.step)]
-        return np.concatenate(parts)
+        return np.concatenate([values for values, _ in parts]), np.concatenate([p for _, p in parts])
 
-    def _reach(self, allowed: BoolArray) -> FloatArray:
-        found = []
+    def _reach(self, allowed: BoolArray) -> tuple[FloatArray, IntArray]:
+        found, pivots = [], []
         for bounds in self.bounds:
             of_mask = self._of_mask(bounds.axis, allowed)
-            part = bounds.values(of_mask)
+            part, masks = bounds.values(of_mask)
             if bounds.is_loose:
-                part = self._settled(bounds, of_mask, part)
+                part = self._settled(bounds, of_mask, part, masks)
+            pivots.append(self.variables[bounds.axis.axis][masks - 1])
             missing = self.width - part.shape[2]
             found.append(np.pad(part, ((0, 0), (0, 0), (0, missing)), constant_values=-np.inf))
-        return np.concatenate(found, axis=1)
+        return np.concatenate(found, axis=1), np.concatenate(pivots, axis=1)
 
     def _of_mask(self, axis: AxisAtoms, allowed: BoolArray) -> BoolArray:
         of_mask = np.zeros((len(allowed), axis.n_masks, self.width), dtype=bool)
@@ -125,7 +127,9 @@ class Block:
         of_mask[:, 0, 0] = True
         return of_mask[..., : int(axis.reads.count.max())]
 
-    def _settled(self, bounds: AxisBounds, of_mask: BoolArray, reach: FloatArray) -> FloatArray:
+    def _settled(
+        self, bounds: AxisBounds, of_mask: BoolArray, reach: FloatArray, masks: IntArray
+    ) -> FloatArray:
         """Replace bounds by exact values where every mask on the way is decided."""
         axis = bounds.axis
         plans = of_mask.argmax(axis=2)
@@ -133,7 +137,7 @@ class Block:
         undecided = open_parts(axis, plans, of_mask.sum(axis=2) == 1)
         rows = axis.rows
         known = np.abs(undecided[:, rows.second] - undecided[:, rows.first]).max(axis=2) < 1e-12
-        return np.where(known[..., None] & of_mask[:, bounds.late], exact[..., None], reach)
+        return np.where(known[..., None] & of_mask[np.arange(len(of_mask))[:, None], masks], exact[..., None], reach)
 
     def open_variables(self, allowed: BoolArray, plan: IntArray, row: int) -> IntArray:
         """Return the undecided variables on which a pair rests under a plan, the latest mask first.

@@ -18,6 +18,7 @@ import numpy as np
 
 from flowplan.engine.propose.atoms import BOUND, LINEAR, VARIANCE, AxisAtoms, Parts
 from flowplan.engine.propose.exact import log_chance, settled, tails
+from flowplan.engine.propose.pivots import pivots
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Sites at which margins are bounded; a few are enough, the exact values see all.
@@ -46,8 +47,9 @@ class _Tables:
     high_marks: FloatArray
 
     @classmethod
-    def empty(cls, nodes: int, masks: int, sizes: int, signed: int) -> "_Tables":
-        a, b = np.zeros((2, nodes, masks, masks, sizes))
+    def empty(cls, nodes: int, masks: int, sizes: int, signed: int, *, marked: bool) -> "_Tables":
+        a = np.zeros((nodes, masks, masks, sizes))
+        b = np.zeros_like(a) if marked else a
         return cls(a, b, *np.zeros((4, nodes, masks, masks, signed)))
 
 
@@ -69,6 +71,7 @@ class AxisBounds:
         self.power = np.tile([2 if kind == VARIANCE else 1 for kind in self.kinds], len(self.sites))
         self.layer, self.pattern, self.marks = (self._flat(p) for p in (axis.layer, axis.pattern, axis.marks))
         self.reads = self._flat(axis.reads.parts)
+        self.is_marked = bool(self.marks.sizes.any())
         carried = (self.layer, self.marks, self.reads)
         self.is_signed = any(parts.signed.any() for parts in carried)
         self.n_signed = self.layer.signed.shape[-1]
@@ -99,8 +102,8 @@ class AxisBounds:
         lead = sizes.shape[:-2]
         return Parts(sizes.reshape(*lead, -1), signed.reshape(*lead, -1))
 
-    def values(self, allowed: BoolArray) -> FloatArray:
-        """Return what every pair reaches at best with each option of its later mask.
+    def values(self, allowed: BoolArray) -> tuple[FloatArray, IntArray]:
+        """Return what every pair reaches at best with each option of its pivot.
 
         Parameters
         ----------
@@ -109,10 +112,13 @@ class AxisBounds:
 
         Returns
         -------
-        ndarray, shape (n_nodes, n_rows, n_options)
+        values : ndarray, shape (n_nodes, n_rows, n_options)
             Upper bounds of margins [nm] or of logarithms; -inf for options that are not allowed.
+        masks : ndarray of int, shape (n_nodes, n_rows)
+            The pivots: the first undecided mask on which a pair rests, else its later mask.
         """
-        sizes, low, high = self._walk(allowed)
+        tables, sizes, low, high = self._walk(allowed)
+        masks = self._push_down(tables, allowed, sizes, low, high)
         sizes = sizes + (self.pattern.sizes[self.late] + self.pattern.sizes[self.early])[:, None]
         same = self.late == self.early
         sizes[:, same] = 0.0
@@ -122,14 +128,41 @@ class AxisBounds:
         back = self.axis.rows.first > self.axis.rows.second
         low[:, back], high[:, back] = -high[:, back], -low[:, back]
         found = self._judge(sizes, low, high)
-        ok = allowed[:, self.late]
-        return np.where(ok, found, -np.inf)
+        ok = allowed[np.arange(len(allowed))[:, None], masks]
+        return np.where(ok, found, -np.inf), masks
 
-    def _walk(self, allowed: BoolArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    def _push_down(
+        self, t: _Tables, allowed: BoolArray, sizes: FloatArray, low: FloatArray, high: FloatArray
+    ) -> IntArray:
+        """Give pairs with a decided later mask by the options of their pivots, in place."""
+        masks = np.repeat(self.late[None], len(allowed), axis=0)
+        p = pivots(self.axis.reads, allowed, self.late, self.early)
+        masks[p.node, p.row] = p.late
+        refs, at, marks = self.axis.reads.masks[p.late, :, 0], p.node[:, None], p.marks[:, None, None]
+        early = p.early[:, None]
+        ok = allowed[p.node, p.late][..., None]
+        option = allowed[p.node, self.late[p.row]].argmax(axis=1)
+        ways = np.where(marks, t.to_marks[at, refs, early], t.to_frame[at, refs, early])
+        ways += self.layer.sizes[p.late][:, None] + self.reads.sizes[p.late]
+        least = np.where(ok, ways, np.inf).min(axis=1)
+        sizes[p.node, p.row] = (sizes[p.node, p.row, option] - least)[:, None] + ways
+        if self.is_signed:
+            own = self.layer.signed[p.late][:, None] + self.reads.signed[p.late]
+            lows = np.where(marks, t.low_marks[at, refs, early], t.low_frame[at, refs, early]) + own
+            highs = np.where(marks, t.high_marks[at, refs, early], t.high_frame[at, refs, early]) + own
+            turned = p.turned[:, None, None]
+            lows, highs = np.where(turned, -highs, lows), np.where(turned, -lows, highs)
+            least, most = np.where(ok, lows, np.inf).min(axis=1), np.where(ok, highs, -np.inf).max(axis=1)
+            low[p.node, p.row] = (low[p.node, p.row, option] - least)[:, None] + lows
+            high[p.node, p.row] = (high[p.node, p.row, option] - most)[:, None] + highs
+        return masks
+
+    def _walk(self, allowed: BoolArray) -> tuple["_Tables", FloatArray, FloatArray, FloatArray]:
         """Fill the tables in process order; return the rows' overlays by option of the later mask."""
         nodes, n, width = allowed.shape
-        t = _Tables.empty(nodes, n, len(self.power), self.n_signed if self.is_signed else 0)
-        least = self._least_own(allowed)
+        t = _Tables.empty(nodes, n, len(self.power), self.n_signed if self.is_signed else 0, marked=self.is_marked)
+        least = self._least_own(allowed) if self.averaged.any() else None
+        barred = np.where(allowed, 0.0, np.inf)[..., None, None]
         sizes = np.zeros((nodes, len(self.late), width, len(self.power)))
         low = high = np.zeros((nodes, len(self.late), width if self.is_signed else 1, self.n_signed))
         if self.is_signed:
@@ -141,15 +174,20 @@ class AxisBounds:
                 to_frame, to_marks = self._ways(t, least, i, count)
                 rows = self.of_mask[i]
                 sizes[:, rows, :count] = to_frame[:, :, self.early[rows]].swapaxes(1, 2)
-                t.to_frame[:, i, :i] = np.where(ok, to_frame, np.inf).min(axis=1) + self.marks.sizes[i]
-                t.to_frame[:, :i, i] = np.where(ok, to_marks, np.inf).min(axis=1)
-                t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = t.to_frame[:, :i, i] + self.marks.sizes[i]
+                to_frame += barred[:, i, :count]
+                t.to_frame[:, i, :i] = to_frame.min(axis=1) + self.marks.sizes[i]
+                if self.is_marked:
+                    to_marks += barred[:, i, :count]
+                    t.to_frame[:, :i, i] = to_marks.min(axis=1)
+                    t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = t.to_frame[:, :i, i] + self.marks.sizes[i]
+                else:
+                    t.to_frame[:, :i, i] = t.to_frame[:, i, :i]
                 if self.is_signed:
                     self._signed(t, ok, i, count, rows, low, high)
             t.to_frame[:, i, i] = self.marks.sizes[i]
             if self.is_signed:
                 t.low_frame[:, i, i] = t.high_frame[:, i, i] = self.marks.signed[i]
-        return sizes, low, high
+        return t, sizes, low, high
 
     def _least_own(self, allowed: BoolArray) -> FloatArray:
         """Least that each mask and its marks add wherever they take part, shape (n_nodes, n_masks, n_sizes)."""
@@ -162,7 +200,9 @@ class AxisBounds:
         own = (self.layer.sizes[i] + self.reads.sizes[i, :count])[:, None]
         if not self.averaged[i]:
             one = masks[:, 0]
-            return t.to_frame[:, one, :i] + own, t.to_marks[:, one, :i] + own
+            to_frame = t.to_frame[:, one, :i]
+            to_frame += own
+            return to_frame, t.to_marks[:, one, :i] + own if self.is_marked else to_frame
         scale = weights[..., None] ** self.power
         if self.averaged[:i].any():
             later = masks[..., None] > np.arange(i)

@@ -1,27 +1,27 @@
 """The best plan of a block, one figure of the score after the other.
 
 What is found soon decides how much can be pruned. So before the tree is searched for anything better
-than the best plan, short searches aim higher: halfway between the first figure in which the best plan
-falls short of what the bound allows, and the bound. Each either finds a plan that good or shows that
-there is none, and mostly fast: the higher the aim, the fewer options are left.
+than the best plan, short searches aim higher: between the first figure in which the best plan falls
+short of what the bound allows, and the bound. Each either finds a plan that good or shows that there is
+none, and mostly fast: the higher the aim, the fewer options are left.
 """
 
-from dataclasses import dataclass
+import time
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from flowplan.engine.propose.block import Block
-from flowplan.engine.propose.climb import climb
-from flowplan.engine.propose.prune import Best, Rules
-from flowplan.engine.propose.search import Node, Search, Watch
+from flowplan.engine.propose.prune import Best, Rules, narrow
+from flowplan.engine.propose.search import Node, Search, Watch, nodes_of
 from flowplan.engine.sources import BoolArray, FloatArray
 
 #: Nodes after which an aim is given up.
-_SHORT = 400
+_SHORT = 150
+_STEPS = 6
+#: Open nodes of which each is shaved.
 _FEW = 4
-_HARD = 200
-#: How far above the best an aim stands, as shares of the gap, tried in turn.
-_AIMS = (0.5, 0.1)
+DEBUG = False
 
 
 @dataclass(slots=True)
@@ -36,14 +36,12 @@ class Solver:
         The best plan so far.
     rules : Rules
         What is wanted.
-    go_on : callable
+    watch : callable
         Asked whether to go on.
     nodes : int
         Nodes bounded.
-    closed : float
-        Share of the tree that is settled.
-    bound : ndarray, shape (n_figures,)
-        A score that no plan exceeds.
+    frontier : list of Node
+        What is not settled.
     """
 
     block: Block
@@ -51,68 +49,77 @@ class Solver:
     rules: Rules
     watch: Watch
     nodes: int = 0
-    closed: float = 0.0
-    frontier: list[Node] = ()
+    weight: FloatArray = field(default_factory=lambda: np.zeros(0))
+    frontier: list[Node] = field(default_factory=list)
 
     def run(self, root: BoolArray) -> bool:
         """Search all plans of a node; return whether the best is proved."""
-        top = np.full(len(self.best.score), np.inf)
-        frontier, aims, hard = [Node(root, top, 1.0)], list(_AIMS), True
-        while frontier and self.go_on():
-            if hard and len(frontier) <= _FEW:
-                frontier = self._shave(frontier)
-                hard = False
-                if not frontier:
-                    break
-            level = min(self._gap(node.bound) for node in frontier)
-            print("   level", level, self.best.score[:3], len(frontier), (frontier[0].allowed.sum(1) > 1).sum(), self.nodes)
-            bound = max(node.bound[level] for node in frontier) if level < len(top) else 0.0
-            if aims and level < len(top) and self._aim(frontier, level, aims.pop(0), bound):
-                aims, hard = list(_AIMS), level == 0
-                continue
-            if aims and level < len(top):
-                continue
-            search = Search(self.block, self.best, self.rules, self.watch)
-            search.run(frontier, level=level)
-            self._count(search)
-            hard = True
-            print("      settle", level, search.nodes, len(search.aside), search.found)
-            self.best, frontier = search.best, search.left()
-            aims = list(_AIMS)
-        self.frontier = frontier
-        return not frontier
+        one = np.ones(1)
+        self.weight = np.zeros(len(root))
+        self.frontier = nodes_of(narrow(self.block, root[None], self.best, self.rules), one)
+        while self.frontier and self.watch(self):
+            if len(self.frontier) <= _FEW:
+                self.frontier = self._shaved(self.best)
+            if not self.frontier:
+                break
+            level = min(self._gap(node.bound) for node in self.frontier)
+            if DEBUG: print("   level", level, self.best.score[:3], len(self.frontier), (self.frontier[0].allowed.sum(1) > 1).sum(), self.nodes)
+            if level < len(self.best.score):
+                self._aim(level)
+            cap = 500
+            while self.watch(self):
+                search = Search(self.block, self.best, self.rules, lambda s: self.watch(self) and s.nodes < cap, self.weight)
+                ended = search.run(self.frontier, level=level)
+                self.nodes += search.nodes
+                if ended or search.found: break
+                cap*=2
+            if DEBUG: print("      settle", level, search.nodes, len(search.aside), search.found)
+            self.best, self.frontier = search.best, search.left()
+        return not self.frontier
 
-    def _shave(self, frontier: list[Node]) -> list[Node]:
+    def _shaved(self, best: Best) -> list[Node]:
         left = []
-        for node in frontier:
-            search = Search(self.block, self.best, self.rules, self.watch)
+        for node in self.frontier:
+            search = Search(self.block, best, self.rules, self.watch, self.weight)
             found = search.shave(node.allowed)
-            self._count(search)
-            self.best = search.best
-            if found.alive[0]:
-                left.append(Node(found.allowed[0], found.bound[0], node.weight))
+            self.nodes += search.nodes
+            if search.found:
+                self.best = search.best
+            left += nodes_of(found, np.array([node.weight]))
         return left
-
-    def go_on(self) -> bool:
-        return self.watch(None)
-
-    def _count(self, search: Search) -> None:
-        self.nodes += search.nodes
 
     def _gap(self, bound: FloatArray) -> int:
         apart = np.abs(bound - self.best.score) > self.block.scale.same
         return int(apart.argmax()) if apart.any() else len(apart)
 
-    def _aim(self, frontier: list[Node], level: int, share: float, bound: float) -> bool:
-        """Look for a plan that reaches a target; return whether there is one."""
-        target = np.full(len(self.best.score), -np.inf)
-        target[:level] = self.best.score[:level]
-        target[level] = self.best.score[level] + share * (bound - self.best.score[level])
-        goal = Best(self.best.plan, target, self.best.changes)
-        search = Search(self.block, goal, Rules(self.rules.limit, "none"), lambda s: s.nodes < _SHORT)
-        ended = search.run(frontier, first=True)
-        self._count(search)
-        print("      aim", level, target[level], 'found' if search.found else ('none' if ended else 'gave up'), search.nodes)
-        if search.found:
-            self.best = search.best
-        return search.found
+    def _aim(self, level: int) -> None:
+        """Close in on the best figure at a level from both sides."""
+        high = max(node.bound[level] for node in self.frontier)
+        for step in range(_STEPS):
+            low = self.best.score[level]
+            if high - low <= self.block.scale.same:
+                return
+            aim = low + (high - low) * 0.5 if step < _STEPS - 1 else low
+            target = np.full(len(self.best.score), -np.inf)
+            target[:level], target[level] = self.best.score[:level], aim
+            goal = Best(self.best.plan, target, self.best.changes)
+            ended = False
+            for cap in (60, 120, 240):
+                search = Search(
+                    self.block,
+                    goal,
+                    Rules(self.rules.limit, "none"),
+                    lambda s, c=cap: s.nodes < c,
+                    self.weight,
+                )
+                t = time.time()
+                ended = search.run(self.frontier, first=True)
+                self.nodes += search.nodes
+                if DEBUG: print("      aim", level, aim, 'found' if search.found else ('none' if ended else 'gave up'), search.nodes, time.time() - t)
+                if search.found or ended: break
+            if search.found:
+                self.best = search.best
+            elif ended:
+                high = aim
+            else:
+                return

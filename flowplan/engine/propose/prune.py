@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.propose.block import Block
+from flowplan.engine.propose.score import Groups
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Pairs' values held at once while options are tried.
@@ -103,7 +104,7 @@ def narrow(block: Block, allowed: BoolArray, best: Best, rules: Rules) -> Narrow
     n_nodes = len(allowed)
     alive = np.ones(n_nodes, dtype=bool)
     bound = np.zeros((n_nodes, len(best.score)))
-    reach = np.zeros((n_nodes, len(block.variable)))
+    reach = np.zeros((n_nodes, block.n_rows))
     options = np.zeros((n_nodes, len(block.choices)), dtype=np.int64)
     work = np.arange(n_nodes)
     while len(work):
@@ -138,15 +139,12 @@ class _Step:
 
     def __init__(self, block: Block, allowed: BoolArray, best: Best, rules: Rules) -> None:
         self.block, self.best, self.rules = block, best, rules
-        groups, scale = block.groups, block.scale
-        values = block.reach(allowed)
-        self.grouped = groups.by_group(values)
-        self.in_groups = allowed[:, groups.used]
-        self.taken = groups.best(self.grouped, self.in_groups)
-        self.options = allowed.argmax(axis=2)
-        self.options[:, groups.used] = self.taken
-        of_row = self.options[:, block.variable]
-        self.reach = np.take_along_axis(values, of_row[..., None], axis=2)[..., 0]
+        scale = block.scale
+        self.values, self.pivots = block.reach(allowed)
+        groups = Groups(self.values, self.pivots, allowed.shape[1], scale)
+        self.grouped, self.options = groups.values, groups.best(allowed)
+        of_row = np.take_along_axis(self.options, self.pivots, axis=1)
+        self.reach = np.take_along_axis(self.values, of_row[..., None], axis=2)[..., 0]
         self.bound = scale.scores(self.reach)
         order = scale.compare(self.bound, best.score)
         self.alive = order > 0
@@ -172,25 +170,25 @@ class _Step:
 
     def _try_options(self, order: IntArray) -> None:
         """Take away the options with which a node would no longer be wanted."""
-        tried = self._doubtful(order) & self.in_groups & self.alive[:, None, None]
-        node, group, option = np.nonzero(tried)
+        tried = self._doubtful(order) & self.left & self.alive[:, None, None]
+        node, variable, option = np.nonzero(tried)
         step = max(1, _MOST_TRIED // self.reach.shape[1])
         for i in range(0, len(node), step):
             some = slice(i, i + step)
-            self._try(node[some], group[some], option[some])
+            self._try(node[some], variable[some], option[some])
 
-    def _try(self, node: IntArray, group: IntArray, option: IntArray) -> None:
-        groups, scale = self.block.groups, self.block.scale
-        rows = np.concatenate([self.reach[node], np.zeros((len(node), 1))], axis=1)
-        rows[np.arange(len(node))[:, None], groups.rows[group]] = self.grouped[node, group, option]
-        order = scale.compare(scale.scores(rows[:, :-1]), self.best.score)
+    def _try(self, node: IntArray, variable: IntArray, option: IntArray) -> None:
+        scale = self.block.scale
+        mine = self.pivots[node] == variable[:, None]
+        rows = np.where(mine, self.values[node, :, option], self.reach[node])
+        order = scale.compare(scale.scores(rows), self.best.score)
         gone = order < (1 if self.rules.ties == "none" else 0)
-        self.left[node[gone], groups.used[group[gone]], option[gone]] = False
+        self.left[node[gone], variable[gone], option[gone]] = False
 
     def _doubtful(self, order: IntArray) -> BoolArray:
-        """Return which options may bring a node down, shape (n_nodes, n_groups, n_options)."""
+        """Return which options may bring a node down, shape (n_nodes, n_variables, n_options)."""
         scale, score = self.block.scale, self.best.score
-        taken = np.arange(self.grouped.shape[2]) == self.taken[..., None]
+        taken = np.arange(self.grouped.shape[2]) == self.options[..., None]
         if scale.goal == "yield":
             return np.asarray(~taken)
         apart = np.abs(self.bound - score) > scale.same
@@ -201,7 +199,7 @@ class _Step:
         found = self.grouped.min(axis=3) <= level[:, None, None]
         if scale.goal == "fails":
             failing = scale.fails(self.grouped)
-            found |= failing > np.take_along_axis(failing, self.taken[..., None], axis=2)
+            found |= failing > np.take_along_axis(failing, self.options[..., None], axis=2)
         return np.asarray(found & ~taken)
 
 

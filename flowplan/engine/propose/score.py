@@ -7,8 +7,8 @@ A score is a list of numbers; the first that differs decides, and more is better
     yield   the sum of log(1 - fail probability)
 
 Each of these orders stays the same when the pairs of two groups are put together, so every group may
-take its own best and the whole is still bounded. Pairs with the same later mask form a group: they
-share its choice.
+take its own best and the whole is still bounded. Pairs with the same pivot form a group: they share
+its choice.
 
 Margins are equal when they differ by no more than 1e-9 of the largest drawn dimension (sums of
 logarithms: by 1e-9); that is far above the rounding of the arithmetic and far below anything drawn.
@@ -74,40 +74,41 @@ class Scale:
 
 
 class Groups:
-    """Pairs by the variable of their later mask.
+    """Pairs of nodes by the variable of their pivot.
 
     Parameters
     ----------
-    variable : ndarray of int, shape (n_rows,)
-        The variable on which each row's value is given by option.
+    values : ndarray, shape (n_nodes, n_rows, n_options)
+        What each pair reaches at best with each option of its pivot.
+    pivots : ndarray of int, shape (n_nodes, n_rows)
+        The variables.
+    n_variables : int
+        How many there are.
     scale : Scale
         How outcomes are compared.
     """
 
-    def __init__(self, variable: IntArray, scale: Scale) -> None:
-        self.variable, self.scale = variable, scale
-        self.used = np.unique(variable)
-        rows = [np.flatnonzero(variable == v) for v in self.used]
-        width = max(len(r) for r in rows)
-        self.rows = np.full((len(rows), width), len(variable), dtype=np.int64)
-        for group, members in zip(self.rows, rows, strict=True):
-            group[: len(members)] = members
+    def __init__(self, values: FloatArray, pivots: IntArray, n_variables: int, scale: Scale) -> None:
+        self.scale = scale
+        order = np.argsort(pivots, axis=1, kind="stable")
+        ordered = np.take_along_axis(pivots, order, axis=1)
+        count = np.arange(ordered.shape[1])
+        starts = np.where(np.diff(ordered, axis=1, prepend=-1) != 0, count, 0)
+        place = count - np.maximum.accumulate(starts, axis=1)
+        node = np.arange(len(values))[:, None]
+        nothing = 0.0 if scale.goal == "yield" else np.inf
+        self.values = np.full((len(values), n_variables, values.shape[2], place.max() + 1), nothing)
+        self.values[node, ordered, :, place] = values[node, order]
 
-    def by_group(self, values: FloatArray) -> FloatArray:
-        """Return values as (n_nodes, n_groups, n_options, n_members), padded with what changes nothing."""
-        padding = np.full((len(values), 1, values.shape[2]), 0.0 if self.scale.goal == "yield" else np.inf)
-        return np.concatenate([values, padding], axis=1)[:, self.rows].swapaxes(2, 3)
-
-    def best(self, grouped: FloatArray, allowed: BoolArray) -> IntArray:
-        """Return the best option of every group, shape (n_nodes, n_groups); the first on a tie.
+    def best(self, allowed: BoolArray) -> IntArray:
+        """Return the best option of every variable, shape (n_nodes, n_variables); the first on a tie.
 
         Parameters
         ----------
-        grouped : ndarray, shape (n_nodes, n_groups, n_options, n_members)
-            What each pair reaches at best with each option of its later mask.
-        allowed : ndarray of bool, shape (n_nodes, n_groups, n_options)
-            The options left; at least one in each group.
+        allowed : ndarray of bool, shape (n_nodes, n_variables, n_options)
+            The options left; at least one for each variable.
         """
+        grouped = self.values
         if self.scale.goal == "yield":
             total = np.where(allowed, grouped.sum(axis=3), -np.inf)
             return (total >= total.max(axis=2, keepdims=True) - self.scale.same).argmax(axis=2)

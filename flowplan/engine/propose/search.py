@@ -17,6 +17,8 @@ from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Nodes tried at once while options are shaved off.
 _AT_ONCE = 64
+#: Pairs that are looked at for the variable to split.
+_ROWS = 6
 #: Nodes split at once.
 _SPLIT = 12
 
@@ -26,9 +28,35 @@ Watch = Callable[["Search"], bool]
 
 @dataclass(frozen=True, slots=True)
 class Node:
+    """Plans that are still to be searched.
+
+    Attributes
+    ----------
+    allowed : ndarray of bool, shape (n_variables, n_options)
+        The options left.
+    bound : ndarray, shape (n_figures,)
+        A score that none of them exceeds.
+    reach : ndarray, shape (n_rows,)
+        What each pair reaches in it.
+    options : ndarray of int, shape (n_variables,)
+        The options taken for it.
+    weight : float
+        Share of the whole tree.
+    """
+
     allowed: BoolArray
     bound: FloatArray
+    reach: FloatArray
+    options: IntArray
     weight: float
+
+
+def nodes_of(found: Narrowed, weight: FloatArray) -> list[Node]:
+    """Return what is alive after pruning as nodes."""
+    return [
+        Node(found.allowed[i], found.bound[i], found.reach[i], found.options[i], float(weight[i]))
+        for i in np.flatnonzero(found.alive)
+    ]
 
 
 @dataclass(slots=True)
@@ -51,12 +79,17 @@ class Search:
         Share of the tree that is settled.
     found : bool
         Whether anything was found that beats what was to be beaten.
+    weight : ndarray, shape (n_variables,)
+        How often splitting each variable led nowhere; such variables are split first.
+    aside : list of Node
+        Nodes put aside by the last run.
     """
 
     block: Block
     best: Best
     rules: Rules
     watch: Watch
+    weight: FloatArray
     nodes: int = 0
     closed: float = 0.0
     found: bool = False
@@ -84,8 +117,9 @@ class Search:
         while self._stack:
             if (first and self.found) or not self.watch(self):
                 return False
-            top = self._stack[-_SPLIT:]
-            del self._stack[-_SPLIT:]
+            width = 1 if first else _SPLIT
+            top = self._stack[-width:]
+            del self._stack[-width:]
             self._split(top, level)
         return True
 
@@ -152,38 +186,44 @@ class Search:
         mine, other = (found.changes, *found.plan), (self.best.changes, *self.best.plan)
         return mine < other
 
-    def _push(self, allowed: BoolArray, weight: FloatArray) -> None:
+    def _push(self, allowed: BoolArray, weight: FloatArray, split: IntArray) -> None:
         """Keep the nodes that may hold something wanted, the most promising on top."""
         found = narrow(self.block, allowed, self.best, self.rules)
         self.nodes += len(weight)
         self.closed += float(weight[~found.alive].sum())
-        left = [Node(found.allowed[i], found.bound[i], float(weight[i])) for i in np.flatnonzero(found.alive)]
-        self._stack += sorted(left, key=lambda node: tuple(node.bound.tolist()))
+        np.add.at(self.weight, split[~found.alive], 1.0)
+        self._stack += sorted(nodes_of(found, weight), key=lambda node: tuple(node.bound.tolist()))
 
     def _split(self, nodes: list[Node], level: int | None) -> None:
         """Judge a plan of each node and split those that it does not solve."""
-        found = narrow(self.block, np.stack([n.allowed for n in nodes]), self.best, self.rules)
-        plans = found.options
+        nodes = self._still_wanted(nodes)
+        if not nodes:
+            return
+        plans = np.stack([node.options for node in nodes])
         if self.rules.limit is not None:
-            plans = np.where(found.allowed[..., 0], 0, plans)
-        alive = np.flatnonzero(found.alive)
-        values = self._take(plans[alive]) if len(alive) else []
-        self.closed += sum(nodes[i].weight for i in np.flatnonzero(~found.alive))
-        children, weights = [], []
-        for i, value in zip(alive, values, strict=True):
-            allowed, weight = found.allowed[i], nodes[i].weight
-            if level is not None and self._beyond(found.bound[i], level):
-                self.aside.append(Node(allowed, found.bound[i], weight))
+            plans = np.where(np.stack([node.allowed for node in nodes])[..., 0], 0, plans)
+        children, weights, split = [], [], []
+        for node, plan, value in zip(nodes, plans, self._take(plans), strict=True):
+            if level is not None and self._beyond(node.bound, level):
+                self.aside.append(node)
                 continue
-            variable = self._branch(allowed, plans[i], found.reach[i], value)
+            variable = self._branch(node.allowed, plan, node.reach, value)
             if variable is None:
-                self.closed += weight
+                self.closed += node.weight
                 continue
-            some = _children(allowed, variable)
+            some = _children(node.allowed, variable)
             children.append(some)
-            weights += [weight / len(some)] * len(some)
+            weights += [node.weight / len(some)] * len(some)
+            split += [variable] * len(some)
         if children:
-            self._push(np.concatenate(children), np.array(weights))
+            self._push(np.concatenate(children), np.array(weights), np.array(split))
+
+    def _still_wanted(self, nodes: list[Node]) -> list[Node]:
+        """Drop nodes that a better plan found meanwhile has settled."""
+        order = self.block.scale.compare(np.stack([node.bound for node in nodes]), self.best.score)
+        least = 1 if self.rules.ties == "none" else 0
+        self.closed += sum(node.weight for node, o in zip(nodes, order, strict=True) if o < least)
+        return [node for node, o in zip(nodes, order, strict=True) if o >= least]
 
     def _beyond(self, bound: FloatArray, level: int) -> bool:
         return bool((np.abs(bound - self.best.score)[: level + 1] <= self.block.scale.same).all())
@@ -196,10 +236,14 @@ class Search:
             rows = np.argsort(-gap)[: int(down.sum())]
         else:
             rows = np.flatnonzero(down)[np.argsort(value[down])]
-        for row in rows:
-            variables = self.block.open_variables(node, plan, int(row))
-            if len(variables):
-                return int(variables[node[variables].sum(axis=1).argmin()])
+        variables: list[int] = []
+        for k, row in enumerate(rows):
+            if k >= _ROWS and variables:
+                break
+            variables += self.block.open_variables(node, plan, int(row)).tolist()
+        if variables:
+            found = np.array(variables)
+            return int(found[(node[found].sum(axis=1) / (1 + self.weight[found])).argmin()])
         undecided = np.flatnonzero(node.sum(axis=1) > 1)
         if not len(undecided) or (self.rules.ties == "none" and not down.any()):
             return None
