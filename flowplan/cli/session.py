@@ -58,7 +58,8 @@ def open_flow(name: str) -> Opened:
     RefusedError
         When the flow is at fault; holds the text for showing the places.
     """
-    from flowplan.files.reader import MOST_BYTES, parse_bytes, read_bytes
+    from flowplan.files.inputfile import MOST_BYTES, read_bytes
+    from flowplan.files.reader import parse_bytes
 
     if not name.strip():
         raise UsageError(

@@ -3,9 +3,9 @@
 from pathlib import Path
 from typing import get_args
 
-from flowplan.cli.output import write_output
+from flowplan.cli.output import refuse_output, write_output
 from flowplan.cli.session import read_flow
-from flowplan.cli.streams import tell
+from flowplan.cli.streams import printable, tell
 from flowplan.cli.tables import Column, show_note, show_table
 from flowplan.errors import Diagnostic, UsageError
 from flowplan.model.base import AXES, Axis
@@ -28,8 +28,9 @@ def tree(name: str, output: str | None, axis: Axis | None) -> None:
     if axis is not None:
         hint = "leave --axis out; the drawing tells the axes apart by line style"
         raise UsageError([Diagnostic("FP602", "a drawing shows both axes", hint)])
+    refuse_output(output, name)
     write_output(output, draw(alignment_dot(read_flow(name)), kind), flow=name)
-    tell(f"wrote {output}")
+    tell(f"wrote {printable(output)}")
 
 
 def _show(flow: Flow, axes: tuple[Axis, ...]) -> None:

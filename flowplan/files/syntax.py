@@ -63,6 +63,10 @@ _ADVICE: tuple[tuple[str, _Advice], ...] = (
         "expected ',' or ']'",
         _Advice("the `[` at {begin} is not closed before this", "add the missing `,` or `]`"),
     ),
+    (
+        "expected node content",
+        _Advice("nothing stands here where a value belongs", "fill it in; close what is open"),
+    ),
     ("found unexpected ':'", _Advice("a `:` without a space after it", "write `key: value`")),
     (
         "unknown escape character",
