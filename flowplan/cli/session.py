@@ -12,7 +12,7 @@ import typer
 from flowplan.cli.findings import count_findings, show_findings
 from flowplan.cli.status import Status
 from flowplan.cli.streams import printable, tell
-from flowplan.errors import Diagnostic, FlowError, FlowplanError, UsageError, nearest
+from flowplan.errors import Diagnostic, FlowError, FlowplanError, Span, UsageError, nearest
 from flowplan.model.base import WAFER
 from flowplan.model.flow import Flow
 
@@ -66,7 +66,7 @@ def open_flow(name: str) -> Opened:
             [Diagnostic("FP602", "no flow file is named", "`flowplan new` writes a starter flow")]
         )
     if name == STDIN:
-        name, raw = "<stdin>", sys.stdin.buffer.read(MOST_BYTES + 1)
+        name, raw = "<stdin>", _read_stdin(MOST_BYTES + 1)
     else:
         raw = read_bytes(name)
     text = raw.decode("utf-8-sig", "replace")
@@ -75,6 +75,14 @@ def open_flow(name: str) -> Opened:
     except FlowError as error:
         raise RefusedError(error, text) from None
     return Opened(loaded.flow, loaded.warnings, text)
+
+
+def _read_stdin(most: int) -> bytes:
+    """Return what standard input holds; a shell may have closed it."""
+    if sys.stdin is None:
+        hint = "give it a flow, or name a file"
+        raise FlowError([Diagnostic("FP101", "standard input is closed", hint, span=Span("<stdin>", 1, 1))])
+    return sys.stdin.buffer.read(most)
 
 
 def read_flow(name: str) -> Flow:

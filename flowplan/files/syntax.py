@@ -109,7 +109,7 @@ def syntax_diagnostic(error: Any, text: str, file: str) -> Diagnostic:
         unforeseen = f"not valid YAML {context}: {problem}".replace(" :", ":")
         known = (advice for part, advice in _ADVICE if part in problem)
         advice = next(known, _Advice(unforeseen.replace("{", "{{").replace("}", "}}"), _DEFAULT_HINT))
-    line, column = began if advice.at_begin else broke
+    line, column = _inside(text, *(began if advice.at_begin else broke))
     begin = f"line {began[0] + 1}, column {began[1] + 1}"
     message = advice.message.format(sign=repr(sign), begin=begin)
     return Diagnostic("FP104", message, advice.hint, span=Span(file, line + 1, column + 1))
@@ -133,6 +133,15 @@ def span_at(text: str, index: int, file: str) -> Span:
 
 def _position(mark: Any) -> tuple[int, int] | None:
     return None if mark is None else (mark.line, mark.column)
+
+
+def _inside(text: str, line: int, column: int) -> tuple[int, int]:
+    """Return the place, or the end of the last line that says something, for one behind it."""
+    lines = _LINE_END.split(text)
+    if line < len(lines) and any(rest.strip() for rest in lines[line:]):
+        return line, min(column, len(lines[line]))
+    last = max((i for i, content in enumerate(lines) if content.strip()), default=0)
+    return last, len(lines[last].rstrip())
 
 
 def _sign_at(text: str, line: int, column: int) -> str:
