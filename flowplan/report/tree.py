@@ -152,7 +152,7 @@ def _node(name: str, layer: Layer, graph: AlignmentGraph) -> dict[str, str]:
         look = {"class": "selfaligned", "style": "rounded,filled", "peripheries": "2"}
     elif layer.side == "back":
         words.append("back side")
-        look = {"class": "back", "shape": "invtrapezium"}
+        look = {"class": "back", "shape": "note"}
     if any(graph.is_averaged(name, axis=axis) for axis in AXES):
         words.append("averaged references")
         look["class"] += " averaged"
