@@ -18,7 +18,8 @@ def tree(name: str, output: str | None, axis: Axis | None) -> None:
     if output is None:
         _show(read_flow(name), (axis,) if axis else AXES)
         return
-    from flowplan.report.tree import Format, alignment_dot, draw
+    from flowplan.report.layout import Format, draw
+    from flowplan.report.tree import alignment_dot
 
     kinds = {f".{kind}": kind for kind in get_args(Format)}
     kind = kinds.get(Path(output).suffix.lower())

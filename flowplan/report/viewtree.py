@@ -7,7 +7,8 @@ from dataclasses import dataclass
 from itertools import pairwise
 
 from flowplan.model.base import AXES
-from flowplan.report.tree import alignment_dot, draw, edges_of
+from flowplan.report.layout import draw
+from flowplan.report.tree import alignment_dot, edges_of
 from flowplan.report.viewbase import Base, counted
 
 _COMMENT = re.compile(r"<!--.*?-->\s*|<title>.*?</title>\s*", re.DOTALL)
