@@ -6,6 +6,7 @@
     ``OutputError``   a result cannot be written
 """
 
+import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from difflib import get_close_matches
@@ -134,6 +135,43 @@ class OutputError(FlowplanError):
     """A file cannot be written."""
 
 
+#: Longer than any key or id that somebody mistypes.
+_LONGEST_WORD = 100
+_LONGEST_QUOTE = 60
+_LONGEST_MESSAGE = 300
+_QUOTED = re.compile(r"'[^']{61,}'|\"[^\"]{61,}\"")
+
+
+def in_brief(finding: Diagnostic) -> Diagnostic:
+    """Return the finding with what it quotes from the file cut short.
+
+    Parameters
+    ----------
+    finding : Diagnostic
+        May quote a text of any length.
+
+    Returns
+    -------
+    Diagnostic
+        Quotes of at most 60 characters, message and hint of at most 300.
+    """
+    return replace(finding, message=_brief(finding.message), hint=_brief(finding.hint))
+
+
+def _brief(text: str) -> str:
+    if len(text) > _LONGEST_QUOTE:
+        text = _QUOTED.sub(lambda found: _cut(found.group(), _LONGEST_QUOTE), text)
+    return _cut(text, _LONGEST_MESSAGE)
+
+
+def _cut(text: str, length: int) -> str:
+    """Cut out the middle of a text that is too long."""
+    if len(text) <= length:
+        return text
+    tail = length // 4
+    return f"{text[: length - tail - 1]}…{text[-tail:]}"
+
+
 def nearest(word: str, known: Sequence[str]) -> str:
     """Return a hint that names the nearest known word, or lists the known ones.
 
@@ -149,6 +187,8 @@ def nearest(word: str, known: Sequence[str]) -> str:
     str
         A sentence for `Diagnostic.hint`; empty when nothing is known.
     """
+    if len(word) > _LONGEST_WORD:
+        return ""
     folded = {k.casefold(): k for k in reversed(known)}
     close = get_close_matches(word.casefold(), list(folded), n=1, cutoff=0.6)
     if close:

@@ -29,7 +29,7 @@ UNITS: dict[str, tuple[Dimension, float]] = {
 LENGTH_UNITS = tuple(name for name, (dimension, _) in UNITS.items() if dimension == "length")
 
 _MICRO = str.maketrans({"\N{MICRO SIGN}": "u", "\N{GREEK SMALL LETTER MU}": "u"})
-_NUMBER_AND_UNIT = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(\S*)")
+_NUMBER_AND_UNIT = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*([^\s\d.,]\S*)?")
 
 
 class UnitError(ValueError):
@@ -124,7 +124,9 @@ def parse_quantity(text: str) -> Quantity:
     match = _NUMBER_AND_UNIT.fullmatch(text.strip())
     if match is None:
         raise UnitError(
-            "FP203", f"{text!r} is not a number with a unit", 'write for example 120 or "0.12 um"'
+            "FP203",
+            f"{text!r} is not a number with a unit",
+            'write for example 120 or "0.12 um", with a point for decimals'
         )
     number, unit = match.groups()
     return Quantity(float(number), canonical_unit(unit) if unit else None)

@@ -130,6 +130,11 @@
   window.addEventListener("hashchange", openTarget);
   openTarget();
 
+  /* A wide tree opens with its root in sight. */
+  const tree = document.querySelector(".treebox");
+  const root = tree.querySelector(".wafer").getBoundingClientRect();
+  tree.scrollLeft = root.x + root.width / 2 - tree.getBoundingClientRect().x - tree.clientWidth / 2;
+
   /* A layer of the tree leads to its row in the mask table and narrows the margin table to its rows. */
   for (const link of document.querySelectorAll(".tree a")) {
     const target = (link.getAttribute("xlink:href") || "").slice(1);

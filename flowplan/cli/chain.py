@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 
 from flowplan.cli.session import known_layer, read_flow
-from flowplan.cli.streams import emit, emit_json
+from flowplan.cli.streams import emit, emit_json, folded, width
 from flowplan.cli.tables import Column, show_note, show_table
 from flowplan.engine.analysis import Engine
 from flowplan.engine.explain import Direct, Explanation, Hop, direct, explain
@@ -90,7 +90,11 @@ class _Page:
         self._section(f"Chain through {chain.through}{several}")
         steps = [(_step(hop), self._error(hop.overlay)) for hop in self.explanation.hops]
         left, right = (max(len(cells[i]) for cells in steps) for i in (0, 1))
+        left = max(min(left, width() - right - 4), 1)
         for (step, error), hop in zip(steps, self.explanation.hops, strict=True):
+            if len(step) > left:
+                emit(folded(f"  {step}", 4))
+                step = ""
             emit(f"  {step:<{left}}  {error:>{right}}")
             show_note(f"      {self._largest(hop)}")
 
@@ -167,7 +171,7 @@ class _Page:
         other = self.alternative
         if other.overlay is None:
             emit("")
-            emit(f"{other.refusal}.")
+            emit(folded(f"{other.refusal}.", 2))
             return
         self._section(f"If {other.later} aligned directly to {other.earlier} along {self.entry.axis}")
         basis = self.flow.basis

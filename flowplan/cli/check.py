@@ -7,7 +7,7 @@ import typer
 from flowplan.cli.findings import count_findings, finding_record
 from flowplan.cli.session import Opened, open_flow
 from flowplan.cli.status import Status
-from flowplan.cli.streams import emit, emit_json, printable, tell
+from flowplan.cli.streams import emit, emit_json, folded, printable, tell
 from flowplan.engine.analysis import Result, analyse
 from flowplan.errors import Diagnostic, FlowError
 from flowplan.report.records import entry_record
@@ -63,9 +63,9 @@ def _show_summary(opened: Opened, result: Result) -> None:
         ("worst", worst_line(result)),
     ]
     found = count_findings(opened.warnings)
-    emit(f"{printable(flow.heading)}: sound" + (f", with {found}" if found else ""))
+    emit(folded(f"{printable(flow.heading)}: sound" + (f", with {found}" if found else ""), 2))
     for label, value in rows:
-        emit(f"  {label:<9} {printable(value)}")
+        emit(folded(f"  {label:<9} {printable(value)}", 12))
 
 
 def _count(number: int, noun: str) -> str:

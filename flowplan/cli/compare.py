@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from flowplan.cli.output import refuse_flow_as_output, write_output
+from flowplan.cli.output import refuse_output, write_output
 from flowplan.cli.session import Opened, known_layer, open_flow
 from flowplan.cli.streams import emit, emit_json, printable, tell
 from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
@@ -57,7 +57,7 @@ def run_compare(asked: Plans) -> None:
     """Compare the plans that were asked for and show what differs."""
     if asked.output:
         for file in asked.files:
-            refuse_flow_as_output(asked.output, file)
+            refuse_output(asked.output, file)
     plans = _plans(asked)
     results = [(plan.name, _judge(plan.flow, asked.basis)) for plan in plans]
     comparison, notes = compare(results), [plan.note for plan in plans]

@@ -15,6 +15,9 @@ _WIDTH = 74
 _BEFORE = 60
 #: A longer list helps nobody; mending these shows the next.
 _MOST_SHOWN = 200
+#: What stands in the file more often than this is one mistake, shown once.
+_MOST_ALIKE = 3
+_MOST_LINES = 8
 
 
 def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> None:
@@ -29,11 +32,35 @@ def show_findings(findings: Iterable[Diagnostic], source: str | None = None) -> 
     """
     lines = _LINE_END.split(source) if source is not None else []
     coloured = has_colour(sys.stderr)
+    found = tuple(_folded(findings))
+    for finding, elsewhere in found[:_MOST_SHOWN]:
+        shown = _finding_lines(finding, lines, coloured=coloured)
+        tell("\n".join(shown + ([_elsewhere(elsewhere)] if elsewhere else [])))
+    hidden = sum(1 + len(elsewhere) for _, elsewhere in found[_MOST_SHOWN:])
+    if hidden:
+        tell(f"… and {hidden} more")
+
+
+def _folded(findings: Iterable[Diagnostic]) -> list[tuple[Diagnostic, list[Diagnostic]]]:
+    """Return each finding to show; one that comes often only once, with the other places."""
     found = tuple(findings)
-    for finding in found[:_MOST_SHOWN]:
-        tell("\n".join(_finding_lines(finding, lines, coloured=coloured)))
-    if len(found) > _MOST_SHOWN:
-        tell(f"… and {len(found) - _MOST_SHOWN} more")
+    groups: dict[tuple[str, str], list[Diagnostic]] = {}
+    for finding in found:
+        groups.setdefault((finding.code, finding.message), []).append(finding)
+    shown: list[tuple[Diagnostic, list[Diagnostic]]] = []
+    for finding in found:
+        first, *others = groups[finding.code, finding.message]
+        if len(others) < _MOST_ALIKE:
+            shown.append((finding, []))
+        elif finding is first:
+            shown.append((finding, others))
+    return shown
+
+
+def _elsewhere(findings: list[Diagnostic]) -> str:
+    lines = list(dict.fromkeys(str(f.span.line) for f in findings if f.span))
+    named = ", ".join(lines[:_MOST_LINES]) + (", …" if len(lines) > _MOST_LINES else "")
+    return f"    the same in {len(findings)} more places, line{'' if len(lines) == 1 else 's'} {named}"
 
 
 def count_findings(findings: Iterable[Diagnostic]) -> str:

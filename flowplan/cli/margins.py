@@ -12,7 +12,7 @@ from flowplan.cli.check import verdict_line, worst_line
 from flowplan.cli.options import Form, Order
 from flowplan.cli.session import known_layer, read_flow
 from flowplan.cli.status import Status
-from flowplan.cli.streams import emit, emit_json, printable
+from flowplan.cli.streams import emit, emit_json, folded, printable
 from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
 from flowplan.engine.analysis import Result, analyse, every_pair
 from flowplan.engine.results import Entry, Verdict
@@ -105,7 +105,7 @@ def _show(result: Result) -> None:
     show_table(columns, rows)
     emit("")
     emit(verdict_line(result))
-    emit(f"worst: {printable(worst_line(result))}")
+    emit(folded(f"worst: {printable(worst_line(result))}", 7))
     if any(e.chain.one_of_several for e in result.entries):
         show_note("* one of several ways: references are averaged")
 
@@ -133,7 +133,8 @@ def _csv(result: Result) -> None:
     writer = csv.DictWriter(text, CSV_COLUMNS, lineterminator="\n")
     writer.writeheader()
     for entry in result.entries:
-        writer.writerow(_csv_row(entry, result.flow.unit))
+        row = _csv_row(entry, result.flow.unit)
+        writer.writerow({k: printable(v) if isinstance(v, str) else v for k, v in row.items()})
     emit(text.getvalue().rstrip("\n"))
 
 

@@ -4,7 +4,7 @@ from pathlib import Path
 
 from flowplan.cli.session import STDIN
 from flowplan.errors import Diagnostic, OutputError
-from flowplan.files.writer import write_atomically
+from flowplan.files.writer import refuse_unwritable, write_atomically
 
 
 def write_output(output: str, content: str | bytes, *, flow: str | None = None) -> None:
@@ -15,8 +15,20 @@ def write_output(output: str, content: str | bytes, *, flow: str | None = None) 
     OutputError
         FP501, when the file cannot be written or is the flow file itself.
     """
-    refuse_flow_as_output(output, flow)
+    refuse_output(output, flow)
     write_atomically(output, content)
+
+
+def refuse_output(output: str, flow: str | None = None) -> None:
+    """Refuse a file that could not be written, or is the flow itself, before the work begins.
+
+    Raises
+    ------
+    OutputError
+        FP501, as `write_output` would raise it.
+    """
+    refuse_flow_as_output(output, flow)
+    refuse_unwritable(output)
 
 
 def refuse_flow_as_output(output: str, flow: str | None) -> None:

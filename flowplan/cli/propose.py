@@ -9,7 +9,7 @@ from typing import Any
 
 import typer
 
-from flowplan.cli.output import refuse_flow_as_output, write_output
+from flowplan.cli.output import refuse_output, write_output
 from flowplan.cli.progress import Bar
 from flowplan.cli.session import STDIN, Opened, open_flow
 from flowplan.cli.status import Status
@@ -72,7 +72,7 @@ def _refuse_output_that_cannot_be(name: str, variant: str | None, wish: Wish) ->
         raise UsageError([Diagnostic("FP602", "--ladder tries every number of changes", hint)])
     if not wish.output:
         return
-    refuse_flow_as_output(wish.output, name)
+    refuse_output(wish.output, name)
     if variant is not None:
         message = "-o writes the file's own plan with new references, not a variant's"
         hint = "leave -o out, and change the variant by hand"

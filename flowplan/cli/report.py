@@ -5,7 +5,7 @@ from pathlib import Path
 import typer
 
 from flowplan.cli.check import verdict_line, worst_line
-from flowplan.cli.output import refuse_flow_as_output, write_output
+from flowplan.cli.output import refuse_output, write_output
 from flowplan.cli.progress import Bar
 from flowplan.cli.session import STDIN, open_flow
 from flowplan.cli.status import Status
@@ -16,7 +16,7 @@ from flowplan.engine.analysis import analyse
 def report(name: str, variant: str | None, output: str | None, *, strict: bool) -> None:
     """Write the report of a flow and say where, and how the flow stands."""
     target = output or default_output(name)
-    refuse_flow_as_output(target, name)
+    refuse_output(target, name)
     opened = open_flow(name, variant)
     opened.show_warnings()
     from flowplan.report.choosing import report_extras
@@ -27,7 +27,7 @@ def report(name: str, variant: str | None, output: str | None, *, strict: bool) 
     with Bar("report") as bar:
         page = render_report(result, progress=bar.step, extras=report_extras(result, opened.variants))
     write_output(target, page, flow=name)
-    tell(f"wrote {target}")
+    tell(f"wrote {printable(target)}")
     tell(verdict_line(result))
     tell(f"worst: {printable(worst_line(result))}")
     if strict and result.counts["fail"]:

@@ -3,7 +3,7 @@
 import json
 
 from flowplan.cli.output import write_output
-from flowplan.cli.streams import emit_json, tell
+from flowplan.cli.streams import emit_json, printable, tell
 from flowplan.model.schema import flow_schema
 
 
@@ -13,4 +13,4 @@ def schema(output: str | None) -> None:
         emit_json(flow_schema())
         return
     write_output(output, json.dumps(flow_schema(), indent=2, ensure_ascii=False) + "\n")
-    tell(f"wrote {output}")
+    tell(f"wrote {printable(output)}")

@@ -12,7 +12,7 @@ import typer
 from flowplan.cli.findings import count_findings, show_findings
 from flowplan.cli.status import Status
 from flowplan.cli.streams import printable, tell
-from flowplan.errors import Diagnostic, FlowError, FlowplanError, UsageError, nearest
+from flowplan.errors import Diagnostic, FlowError, FlowplanError, Span, UsageError, nearest
 from flowplan.model.base import WAFER
 from flowplan.model.flow import Flow
 
@@ -79,14 +79,15 @@ def open_flow(name: str, variant: str | None = None) -> Opened:
     RefusedError
         When the flow is at fault; holds the text for showing the places.
     """
-    from flowplan.files.reader import MOST_BYTES, parse_bytes, read_bytes
+    from flowplan.files.inputfile import MOST_BYTES, read_bytes
+    from flowplan.files.reader import parse_bytes
 
     if not name.strip():
         raise UsageError(
             [Diagnostic("FP602", "no flow file is named", "`flowplan new` writes a starter flow")]
         )
     if name == STDIN:
-        name, raw = "<stdin>", sys.stdin.buffer.read(MOST_BYTES + 1)
+        name, raw = "<stdin>", _read_stdin(MOST_BYTES + 1)
     else:
         raw = read_bytes(name)
     text = raw.decode("utf-8-sig", "replace")
@@ -95,6 +96,14 @@ def open_flow(name: str, variant: str | None = None) -> Opened:
     except FlowError as error:
         raise RefusedError(error, text) from None
     return Opened(loaded, loaded.plan(variant), text)
+
+
+def _read_stdin(most: int) -> bytes:
+    """Return what standard input holds; a shell may have closed it."""
+    if sys.stdin is None:
+        hint = "give it a flow, or name a file"
+        raise FlowError([Diagnostic("FP101", "standard input is closed", hint, span=Span("<stdin>", 1, 1))])
+    return sys.stdin.buffer.read(most)
 
 
 def read_flow(name: str, variant: str | None = None) -> Flow:

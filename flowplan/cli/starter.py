@@ -3,7 +3,7 @@
 from pathlib import Path
 
 from flowplan.cli.session import STDIN
-from flowplan.cli.streams import emit, tell
+from flowplan.cli.streams import emit, printable, tell
 from flowplan.errors import Diagnostic, OutputError
 from flowplan.files.resources import resource_folder
 from flowplan.files.writer import write_atomically
@@ -22,6 +22,7 @@ def new(output: str, *, force: bool) -> None:
         hint = "name another file, or give --force to replace it"
         raise OutputError([Diagnostic("FP501", f"{output!r} exists already", hint)])
     write_atomically(target, text)
-    tell(f"wrote {output}")
-    tell(f"next: flowplan check {output}")
-    tell(f"for completion in your editor: flowplan schema -o {target.with_name(SCHEMA_FILE)}")
+    shown = printable(output)
+    tell(f"wrote {shown}")
+    tell(f"next: flowplan check {shown}")
+    tell(f"for completion in your editor: flowplan schema -o {printable(str(target.with_name(SCHEMA_FILE)))}")

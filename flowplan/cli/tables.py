@@ -1,15 +1,13 @@
 """Tables: calm, coloured on a terminal, plain and always of one width in a pipe."""
 
 import io
-import shutil
 import sys
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
-from flowplan.cli.streams import emit, has_colour, printable
+from flowplan.cli.streams import emit, folded, has_colour, printable, width
 
-_PIPE_WIDTH = 80
 #: Colours say what the words already say.
 _STYLES = {"fail": "bold red", "tight": "yellow", "pass": "green"}
 
@@ -46,9 +44,8 @@ def show_table(columns: Sequence[Column], rows: Iterable[Sequence[str]], indent:
     for row in rows:
         table.add_row(*(Text(printable(cell), style=_STYLES.get(cell, "")) for cell in row))
     paper = io.StringIO()
-    width = shutil.get_terminal_size().columns if sys.stdout.isatty() else _PIPE_WIDTH
     console = Console(
-        file=paper, width=width, force_terminal=coloured, color_system="standard" if coloured else None
+        file=paper, width=width(), force_terminal=coloured, color_system="standard" if coloured else None
     )
     console.print(Padding(table, (0, 0, 0, indent)))
     emit("\n".join(line.rstrip() for line in paper.getvalue().splitlines()))
@@ -56,7 +53,8 @@ def show_table(columns: Sequence[Column], rows: Iterable[Sequence[str]], indent:
 
 def show_note(text: str, *, strong: bool = False) -> None:
     """Print a line that stands by a table; a terminal shows it quieter, or stronger."""
-    text = printable(text)
+    indent = len(text) - len(text.lstrip())
+    text = folded(printable(text), indent + 2)
     if text and has_colour(sys.stdout):
         text = f"\x1b[{1 if strong else 2}m{text}\x1b[0m"
     emit(text)

@@ -3,9 +3,9 @@
 from pathlib import Path
 from typing import get_args
 
-from flowplan.cli.output import write_output
+from flowplan.cli.output import refuse_output, write_output
 from flowplan.cli.session import read_flow
-from flowplan.cli.streams import tell
+from flowplan.cli.streams import printable, tell
 from flowplan.cli.tables import Column, show_note, show_table
 from flowplan.errors import Diagnostic, UsageError
 from flowplan.model.base import AXES, Axis
@@ -18,7 +18,8 @@ def tree(name: str, variant: str | None, output: str | None, axis: Axis | None) 
     if output is None:
         _show(read_flow(name, variant), (axis,) if axis else AXES)
         return
-    from flowplan.report.tree import Format, alignment_dot, draw
+    from flowplan.report.layout import Format, draw
+    from flowplan.report.tree import alignment_dot
 
     kinds = {f".{kind}": kind for kind in get_args(Format)}
     kind = kinds.get(Path(output).suffix.lower())
@@ -28,8 +29,9 @@ def tree(name: str, variant: str | None, output: str | None, axis: Axis | None) 
     if axis is not None:
         hint = "leave --axis out; the drawing tells the axes apart by line style"
         raise UsageError([Diagnostic("FP602", "a drawing shows both axes", hint)])
+    refuse_output(output, name)
     write_output(output, draw(alignment_dot(read_flow(name, variant)), kind), flow=name)
-    tell(f"wrote {output}")
+    tell(f"wrote {printable(output)}")
 
 
 def _show(flow: Flow, axes: tuple[Axis, ...]) -> None:

@@ -2,18 +2,15 @@
 
 import os
 from dataclasses import dataclass
-from pathlib import Path as FilePath
 
-from flowplan.errors import Diagnostic, FlowError, Span, UsageError, nearest
+from flowplan.errors import Diagnostic, FlowError, Span, UsageError, in_brief, nearest
+from flowplan.files.inputfile import decode, read_bytes
 from flowplan.files.plans import Examined, read_variants
 from flowplan.files.yamltext import Places, read_yaml
 from flowplan.model.build import build
 from flowplan.model.check import check
 from flowplan.model.flow import Flow
 from flowplan.model.salvage import salvage
-
-#: A flow of several hundred masks stays well below this [bytes].
-MOST_BYTES = 4_000_000
 
 _AT_KEY = frozenset({"FP201", "FP309", "FP105"})
 
@@ -75,10 +72,7 @@ def load_with_warnings(file: str | os.PathLike[str]) -> Loaded:
 
 def parse_bytes(raw: bytes, name: str) -> Loaded:
     """Read a flow from the bytes of a file or of a stream; see `parse`."""
-    if len(raw) > MOST_BYTES:
-        message = f"larger than {MOST_BYTES // 1_000_000} MB, which no flow file needs"
-        raise FlowError([Diagnostic("FP103", message, "is this the right file?", span=Span(name, 1, 1))])
-    return parse(_decode(raw, name), name)
+    return parse(decode(raw, name), name)
 
 
 def parse(text: str, name: str = "<text>") -> Loaded:
@@ -125,19 +119,15 @@ def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> li
     rest = salvage(data, findings)
     if rest.flow is None or not isinstance(data, dict):
         return []
-    lost_size = any(part in data and getattr(rest.flow, part) is None for part in ("field", "wafer"))
     return [
         Diagnostic(d.code, d.message, d.hint, rest.original(d.path), None, d.severity)
         for d in check(rest.flow)
-        if d.severity == "error"
-        and not any(repr(name) in d.message for name in rest.dropped)
-        and not (d.path and d.path[0] not in data)
-        and not (d.code == "FP403" and lost_size)
+        if d.severity == "error" and not rest.misleads(d)
     ]
 
 
 def _place(findings: tuple[Diagnostic, ...], places: Places) -> tuple[Diagnostic, ...]:
-    placed = [d.at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings]
+    placed = [in_brief(d).at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings]
     once = {(d.span, d.message): d for d in placed}
     return tuple(sorted(once.values(), key=_position))
 
@@ -145,39 +135,3 @@ def _place(findings: tuple[Diagnostic, ...], places: Places) -> tuple[Diagnostic
 def _position(finding: Diagnostic) -> tuple[int, int]:
     span = finding.span or Span("", 0, 0)
     return span.line, span.column
-
-
-def read_bytes(file: str | os.PathLike[str]) -> bytes:
-    """Return the bytes of a file, cut off just after `MOST_BYTES`.
-
-    Raises
-    ------
-    FlowError
-        FP101, when the file cannot be read.
-    """
-    path, name = FilePath(file), os.fspath(file)
-    try:
-        if path.is_dir():
-            raise FlowError([_cannot(name, "is a folder, not a flow file", "name a file in it")])
-        if not path.exists():
-            raise FlowError([_cannot(name, "no such file", "check the name; `flowplan new` writes one")])
-        with path.open("rb") as stream:
-            return stream.read(MOST_BYTES + 1)
-    except (OSError, ValueError) as error:
-        reason = getattr(error, "strerror", None) or str(error)
-        raise FlowError([_cannot(name, f"cannot be read: {reason}", "check its permissions")]) from None
-
-
-def _decode(raw: bytes, name: str) -> str:
-    try:
-        return raw.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = raw.count(b"\n", 0, error.start) + 1
-        column = error.start - (raw.rfind(b"\n", 0, error.start) + 1) + 1
-        hint = "save the file as UTF-8"
-        span = Span(name, line, column)
-        raise FlowError([Diagnostic("FP102", "not UTF-8 text", hint, span=span)]) from None
-
-
-def _cannot(name: str, message: str, hint: str) -> Diagnostic:
-    return Diagnostic("FP101", message, hint, span=Span(name, 1, 1))

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from flowplan.errors import Diagnostic, Path, UsageError
-from flowplan.files.yamltext import compose
+from flowplan.files.yamltext import read_yaml
 
 _ANCHOR = re.compile(r"&\S+\s+")
 
@@ -44,11 +44,19 @@ def replace_values(text: str, changes: Mapping[Path, str], name: str = "<text>")
     UsageError
         FP602, when a path does not stand in the text.
     """
-    root = compose(text, name)
+    root = _marked_nodes(text, name)
     cuts = [_cut(text, root, path, new) for path, new in changes.items()]
     for cut in sorted(cuts, key=lambda c: c.start, reverse=True):
         text = text[: cut.start] + cut.text + text[cut.end :]
     return text
+
+
+def _marked_nodes(text: str, name: str) -> Any:
+    """Return the text's nodes with the marks of their ends, once it is known to be readable."""
+    from ruamel.yaml import YAML
+
+    read_yaml(text, name)
+    return YAML(typ="safe").compose(text)
 
 
 def _cut(text: str, root: Any, path: Path, new: str) -> _Cut:

@@ -1,5 +1,6 @@
 """Writing results: whole or not at all."""
 
+import errno
 import os
 import tempfile
 from pathlib import Path
@@ -25,18 +26,45 @@ def write_atomically(file: str | os.PathLike[str], content: str | bytes) -> None
     """
     raw = content.encode("utf-8") if isinstance(content, str) else content
     try:
-        target = Path(file).resolve()
-        if target.is_dir():
-            raise IsADirectoryError(21, "is a folder")
+        target = _target(file)
         if target.exists() and not target.is_file():
             target.write_bytes(raw)  # a device or a pipe is written to, never replaced
         else:
             _replace(target, raw)
     except (OSError, ValueError) as error:
-        reason = getattr(error, "strerror", None) or str(error)
-        hint = "name a file in a folder that exists and can be written"
-        message = f"cannot write {os.fspath(file)!r}: {reason}"
-        raise OutputError([Diagnostic("FP501", message, hint)]) from None
+        raise _refused(file, error) from None
+
+
+def refuse_unwritable(file: str | os.PathLike[str]) -> None:
+    """Refuse what `write_atomically` could not write, before the work is done that it would hold.
+
+    Raises
+    ------
+    OutputError
+        FP501, for a folder, or a name in a folder that does not exist or cannot be written.
+    """
+    try:
+        target = _target(file)
+        if not target.exists():
+            target.parent.stat()
+        if not os.access(target.parent, os.W_OK | os.X_OK):
+            raise PermissionError(errno.EACCES, os.strerror(errno.EACCES))
+    except (OSError, ValueError) as error:
+        raise _refused(file, error) from None
+
+
+def _target(file: str | os.PathLike[str]) -> Path:
+    target = Path(file).resolve()
+    if target.is_dir():
+        raise IsADirectoryError(errno.EISDIR, "is a folder")
+    return target
+
+
+def _refused(file: str | os.PathLike[str], error: OSError | ValueError) -> OutputError:
+    reason = getattr(error, "strerror", None) or str(error)
+    hint = "name a file in a folder that exists and can be written"
+    message = f"cannot write {os.fspath(file)!r}: {reason}"
+    return OutputError([Diagnostic("FP501", message, hint)])
 
 
 def _replace(target: Path, raw: bytes) -> None:

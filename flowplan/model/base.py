@@ -17,6 +17,7 @@ from pydantic import (
 )
 from pydantic_core import CoreSchema, PydanticCustomError, core_schema
 
+from flowplan.model.unitwords import unit_hint
 from flowplan.units import UNITS, Dimension, Quantity, UnitError, parse_quantity
 
 Axis = Literal["x", "y"]
@@ -39,9 +40,13 @@ QUANTITY_SCHEMA: dict[str, Any] = {
 }
 
 
-def refuse(code: str, message: str, hint: str = "") -> PydanticCustomError:
-    """Return the error that a validator raises, carrying a diagnostic code and a hint."""
-    return PydanticCustomError(code, "{message}", {"message": message, "hint": hint})
+#: No length, angle or ratio of a wafer process comes near this, in whatever unit it is written.
+LARGEST = 1e12
+
+
+def refuse(code: str, message: str, hint: str = "", *, key: str = "") -> PydanticCustomError:
+    """Return the error that a validator raises, with a diagnostic code, a hint and the key to point at."""
+    return PydanticCustomError(code, "{message}", {"message": message, "hint": hint, "key": key})
 
 
 class Model(BaseModel):
@@ -67,17 +72,26 @@ def read_quantity(value: object) -> Quantity:
         try:
             quantity = parse_quantity(value)
         except UnitError as error:
-            raise refuse(error.code, error.message, error.hint) from None
+            unit = value.strip().lstrip("+-0123456789.eE").strip()
+            hint = unit_hint(error, unit) if error.code == "FP401" else error.hint
+            raise refuse(error.code, error.message, hint) from None
     elif isinstance(value, int | float) and not isinstance(value, bool):
-        try:
-            quantity = Quantity(float(value))
-        except OverflowError:
-            quantity = Quantity(math.inf)
+        quantity = Quantity(_as_float(value))
     else:
         raise refuse("FP203", "a number or a text with a unit belongs here", 'for example 120 or "0.12 um"')
     if not math.isfinite(quantity.value):
         raise refuse("FP207", "the number is not finite", "write an ordinary number")
+    if abs(quantity.value) > LARGEST:
+        raise refuse("FP206", f"{quantity} is far too large", "check the number and its unit")
     return quantity
+
+
+def _as_float(value: float) -> float:
+    """Convert to a float; a whole number beyond its range is infinite."""
+    try:
+        return float(value)
+    except OverflowError:
+        return math.inf
 
 
 class _QuantityAnnotation:
@@ -198,7 +212,7 @@ def _read_share(value: object) -> object:
         except ValueError:
             raise refuse("FP203", f"{value!r} is not a share", "write 0.8 or 80 %") from None
     elif isinstance(value, int | float) and not isinstance(value, bool):
-        number = float(value)
+        number = _as_float(value)
     else:
         raise refuse("FP203", "a share belongs here", "write 0.8 or 80 %")
     if not math.isfinite(number):
@@ -221,17 +235,31 @@ Share = Annotated[
 def _finite_positive(value: object) -> object:
     if isinstance(value, bool) or not isinstance(value, int | float):
         raise refuse("FP203", "a plain number belongs here", "for example 3")
-    if not math.isfinite(value):
+    number = _as_float(value)
+    if not math.isfinite(number):
         raise refuse("FP207", "the number is not finite", "write an ordinary number")
-    if value <= 0:
+    if number <= 0:
         raise refuse("FP206", f"{value} is not above 0", "give a number above 0")
-    return float(value)
+    return number
 
 
 PositiveNumber = Annotated[
     float,
     BeforeValidator(_finite_positive, json_schema_input_type=Annotated[float, Field(gt=0)]),
 ]
+
+
+LEAST_SIGMAS, MOST_SIGMAS = 0.01, 100.0
+
+
+def _ordinary(number: float) -> float:
+    if not LEAST_SIGMAS <= number <= MOST_SIGMAS:
+        message = f"{number:g} is no usual number of standard deviations"
+        raise refuse("FP206", message, f"between {LEAST_SIGMAS:g} and {MOST_SIGMAS:g}, mostly 1 or 3")
+    return number
+
+
+Sigmas = Annotated[PositiveNumber, AfterValidator(_ordinary)]
 
 
 def _read_id(value: object) -> str:

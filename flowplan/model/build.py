@@ -1,14 +1,16 @@
 """From plain data to a `Flow`: form errors in the words of the flow file, as many as there are."""
 
 import types
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from typing import Annotated, Any, Literal, Union, get_args, get_origin
 
 from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
 
 from flowplan.errors import CODES, Diagnostic, Path, nearest
+from flowplan.model.base import Described
 from flowplan.model.flow import Flow
+from flowplan.model.formwords import type_hint, without_echoes
 
 #: Longest list of findings that still helps a reader.
 MOST_DIAGNOSTICS = 200
@@ -47,7 +49,7 @@ def build(data: object) -> tuple[Flow | None, tuple[Diagnostic, ...]]:
                 break
             diagnostic = _translate(detail, data)
             found.setdefault((diagnostic.path, diagnostic.message), diagnostic)
-        return None, tuple(found.values())
+        return None, without_echoes(tuple(found.values()))
 
 
 def follow(data: object, path: Path) -> object:
@@ -82,12 +84,13 @@ def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
     path = real_path(data, loc)
     context = detail.get("ctx", {})
     if kind in CODES:
-        return Diagnostic(kind, context["message"], context["hint"], path)
+        key = context["key"]
+        return Diagnostic(kind, context["message"], context["hint"], (*path, key) if key else path)
     if kind == "extra_forbidden":
-        known = [name for name in _fields_at(loc[:-1]) if name]
+        known = _fields_at(loc[:-1])
         return Diagnostic("FP201", f"unknown key {loc[-1]!r}", nearest(str(loc[-1]), known), path)
     if kind == "missing" and isinstance(loc[-1], int):
-        return Diagnostic("FP205", f"too few entries; at least {loc[-1] + 1} are wanted", "", path)
+        return Diagnostic("FP205", "too few entries", _ENTRIES_HINT, path)
     if kind == "missing":
         return Diagnostic("FP202", f"{loc[-1]!r} is missing", f"add `{loc[-1]}: …`", path)
     if kind == "literal_error":
@@ -96,16 +99,17 @@ def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
         hint = nearest(str(given), choices.split(", "))
         return Diagnostic("FP204", f"{given!r} is not one of {choices}", hint, path)
     if kind in ("too_short", "too_long", "string_too_short"):
-        return Diagnostic("FP205", _count_message(kind, context), "", path)
+        return Diagnostic("FP205", *_COUNT[kind], path)
     message = _WRONG_TYPE.get(kind, detail["msg"].lower())
-    hint = "put it in quotes" if kind == "string_type" else ""
-    return Diagnostic("FP203", message, hint, path)
+    return Diagnostic("FP203", message, type_hint(kind, follow(data, path)), path)
 
 
-def _count_message(kind: str, context: Mapping[str, Any]) -> str:
-    if kind == "too_long":
-        return f"too many entries; {context.get('max_length')} are wanted"
-    return f"too few entries; at least {context.get('min_length', 1)} are wanted"
+_ENTRIES_HINT = "`between` names two layers"
+_COUNT = {
+    "too_short": ("too few entries", _ENTRIES_HINT),
+    "too_long": ("too many entries", _ENTRIES_HINT),
+    "string_too_short": ("an empty text", "write a name"),
+}
 
 
 def _fields_at(loc: Sequence[str | int]) -> list[str]:
@@ -114,7 +118,8 @@ def _fields_at(loc: Sequence[str | int]) -> list[str]:
     for step in loc:
         current = _descend(current, step)
     members = [m for m in _members(current) if isinstance(m, type) and issubclass(m, BaseModel)]
-    return [name for model in members for name in model.model_fields]
+    names = dict.fromkeys(name for model in members for name in model.model_fields)
+    return sorted(names, key=lambda name: name in Described.model_fields)
 
 
 def _descend(annotation: Any, step: str | int) -> Any:

@@ -106,15 +106,20 @@ def _candidates(flow: Flow, index: int, freed: bool) -> list[References]:
     return [References.model_construct(x=reading, y=reading) for reading in readings]
 
 
+def same_readings(one: Readings, other: Readings) -> bool:
+    """Return whether two references are the same, however their weights are written."""
+    return _normal(one) == _normal(other)
+
+
 def _distinct(references: list[References], axes: tuple[Axis, ...]) -> tuple[tuple[Readings, ...], ...]:
-    """Return the parts on these axes, each once, however its weights are written."""
-    found = {
-        tuple(_normal(candidate, axis) for axis in axes): tuple(candidate.on(axis) for axis in axes)
-        for candidate in reversed(references)
-    }
-    first = [tuple(_normal(candidate, axis) for axis in axes) for candidate in references]
-    return tuple(found[key] for key in dict.fromkeys(first))
+    """Return the parts on these axes, each once, the first that is written so."""
+    found: dict[tuple[object, ...], tuple[Readings, ...]] = {}
+    for candidate in references:
+        parts = tuple(candidate.on(axis) for axis in axes)
+        found.setdefault(tuple(_normal(part) for part in parts), parts)
+    return tuple(found.values())
 
 
-def _normal(references: References, axis: Axis) -> tuple[tuple[str, float, object], ...]:
-    return tuple((r.mask, round(weight, 12), r.alignment) for r, weight in references.weighted(axis))
+def _normal(readings: Readings) -> tuple[tuple[str, float, object], ...]:
+    references = References.model_construct(x=readings, y=readings)
+    return tuple((r.mask, round(weight, 12), r.alignment) for r, weight in references.weighted("x"))

@@ -71,9 +71,13 @@ def _there_are_masks(flow: Flow) -> Iterator[Diagnostic]:
 
 
 def _tools_exist(flow: Flow) -> Iterator[Diagnostic]:
+    if not flow.tools and flow.masks:
+        hint = "add `tools: {stepper: {alignment: 30}}`, with your own names and figures"
+        yield Diagnostic("FP205", "the flow has no tool", hint, ("tools",))
+        return
     for i, mask in enumerate(flow.masks):
         if mask.tool not in flow.tools:
-            hint = nearest(mask.tool, list(flow.tools)) or "add it under `tools:`"
+            hint = nearest(mask.tool, list(flow.tools))
             yield Diagnostic("FP301", f"unknown tool {mask.tool!r}", hint, ("masks", i, "tool"))
     used = {mask.tool for mask in flow.masks}
     for name in flow.tools:
@@ -91,15 +95,20 @@ def _every_reference(mask: Mask) -> Iterator[tuple[Path, References]]:
 
 def _references_are_earlier(flow: Flow) -> Iterator[Diagnostic]:
     everything = [name for name, _ in _every_id(flow)]
+    twice = {name for name, count in Counter(everything).items() if count > 1}
     order = {name: i for i, name in enumerate(flow.layers)}
     for i, mask in enumerate(flow.masks):
-        earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
         for where, references in _every_reference(mask):
             for axis in AXES:
                 for k, reading in enumerate(references.on(axis)):
-                    if reading.mask not in earlier:
-                        path: Path = ("masks", i, *where, axis, k, "mask")
-                        yield _bad_reference(mask.id, reading.mask, everything, earlier, flow, path)
+                    path: Path = ("masks", i, *where, axis, k, "mask")
+                    known = order.get(reading.mask)
+                    if {mask.id, reading.mask} & twice and reading.mask in everything:
+                        continue  # which of the two is meant cannot be told
+                    if reading.mask == WAFER or (known is not None and known < order.get(mask.id, 0)):
+                        continue
+                    earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
+                    yield _bad_reference(mask.id, reading.mask, everything, earlier, flow, path)
 
 
 def _bad_reference(

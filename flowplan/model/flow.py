@@ -12,14 +12,15 @@ from flowplan.model.base import (
     Model,
     NonNegativeLength,
     PositiveLength,
-    PositiveNumber,
     Share,
+    Sigmas,
     refuse,
 )
 from flowplan.model.masks import Mask, SelfAligned
 from flowplan.model.pairs import Pair
 from flowplan.model.terms import Shape, Term
 from flowplan.model.tools import Tool
+from flowplan.model.unitwords import unit_hint
 from flowplan.model.variants import Variant
 from flowplan.units import LENGTH_UNITS, Quantity, UnitError, canonical_unit
 
@@ -34,7 +35,10 @@ def _length_unit(value: object) -> object:
     try:
         name = canonical_unit(value.strip())
     except UnitError as error:
-        raise refuse(error.code, error.message, "choose from " + ", ".join(LENGTH_UNITS)) from None
+        hint = unit_hint(error, value.strip())
+        if hint == error.hint:
+            hint = "choose from " + ", ".join(LENGTH_UNITS)
+        raise refuse(error.code, error.message, hint) from None
     if name not in LENGTH_UNITS:
         raise refuse("FP402", f"{value} is not a length", "choose from " + ", ".join(LENGTH_UNITS))
     return name
@@ -74,8 +78,8 @@ class Flow(Described):
     flow: Annotated[str, Field(min_length=1)] = Field(description="The flow's name.")
     revision: str = Field("", description="Revision of this file.")
     unit: FileUnit = Field("nm", description="Unit of every bare length in this file.")
-    sigma: PositiveNumber = Field(3.0, description="Standard deviations at which random sizes are quoted.")
-    confidence: PositiveNumber = Field(3.0, description="Standard deviations at which the verdict is taken.")
+    sigma: Sigmas = Field(3.0, description="Standard deviations at which random sizes are quoted.")
+    confidence: Sigmas = Field(3.0, description="Standard deviations at which the verdict is taken.")
     basis: Basis = Field(
         "mixed", description="How bounds and random parts add up for the verdict: mixed, rss or linear."
     )

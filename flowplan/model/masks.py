@@ -124,7 +124,8 @@ class Mask(Described):
     @model_validator(mode="after")
     def _one_edge(self) -> "Mask":
         if self.cd is not None and self.edge is not None:
-            raise refuse("FP208", "both cd and edge are given", "keep one; cd is full width, edge one side")
+            hint = "keep one; cd is full width, edge one side"
+            raise refuse("FP208", "both cd and edge are given", hint, key="edge")
         return self
 
 

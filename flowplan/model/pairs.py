@@ -4,6 +4,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import AfterValidator, BeforeValidator, Field
 
+from flowplan.errors import nearest
 from flowplan.model.base import (
     AXES,
     Axis,
@@ -143,7 +144,8 @@ def _known_rule(value: object) -> Any:
     if isinstance(value, dict) and value.get("rule") not in RULES:
         if "rule" not in value:
             raise refuse("FP202", "the pair has no rule", "give one of " + ", ".join(RULES))
-        raise refuse("FP204", f"unknown rule {value['rule']!r}", "choose from " + ", ".join(RULES))
+        rule = value["rule"]
+        raise refuse("FP204", f"unknown rule {rule!r}", nearest(str(rule), RULES), key="rule")
     return value
 
 

@@ -8,7 +8,8 @@ from flowplan.report.tree import cut
 
 _BOX_W, _BOX_H, _STEP = 148, 30, 66
 _LEFT, _MIDDLE, _RIGHT = 90, 210, 330
-_WIDTH, _SINGLE = 420, 220
+#: A chain of one branch needs room for its boxes and for a label beside the line.
+_WIDTH, _SINGLE = 420, 190
 #: A box holds so many characters of an id.
 _FITS = 17
 #: A bar that runs past its end is cut at this share of its length.
@@ -88,7 +89,7 @@ def chain_drawing(chain: Chain, labels: Sequence[str]) -> ChainDrawing:
         for (child, ref), label in zip(chain.hops(), labels, strict=True)
     ]
     height = max(y for _, y in places.values()) + _BOX_H // 2 + 6
-    left, width = (_MIDDLE - _SINGLE // 2, _SINGLE) if single else (0, _WIDTH)
+    left, width = (_MIDDLE - _BOX_W // 2 - 2, _SINGLE) if single else (0, _WIDTH)
     return ChainDrawing(left, width, height, _BOX_W, _BOX_H, tuple(boxes), tuple(lines))
 
 

@@ -17,7 +17,7 @@ REMEDY_HEADINGS = (
     ("change", False), ("margin", True), ("verdict", False), ("worst", True), ("fail", True), ("worse", True),
 )  # fmt: skip
 REMEDY_LEGEND = (
-    "margin, verdict: of this pair with the one change made; worst, fail: worst margin",
+    "margin, verdict: of this pair with that one change; worst, fail: worst margin",
     "of the flow and how many fail then; worse: other margins that get smaller",
 )
 

@@ -1,4 +1,4 @@
-"""The alignment tree as DOT text, and drawing it in process."""
+"""The alignment tree as DOT text."""
 
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -12,7 +12,6 @@ from flowplan.model.masks import Mask, SelfAligned
 if TYPE_CHECKING:
     import graphviz
 
-Format = Literal["svg", "png", "dot"]
 EdgeKind = Literal["both", "x", "y", "follow"]
 
 #: One line style for each kind of edge; colour only supports it.
@@ -152,7 +151,7 @@ def _node(name: str, layer: Layer, graph: AlignmentGraph) -> dict[str, str]:
         look = {"class": "selfaligned", "style": "rounded,filled", "peripheries": "2"}
     elif layer.side == "back":
         words.append("back side")
-        look = {"class": "back", "shape": "invtrapezium"}
+        look = {"class": "back", "shape": "note"}
     if any(graph.is_averaged(name, axis=axis) for axis in AXES):
         words.append("averaged references")
         look["class"] += " averaged"
@@ -181,26 +180,3 @@ def _text(text: str) -> str:
 
     shown: str = graphviz.escape(cut(text, 200).replace("&", "&amp;"))
     return shown
-
-
-def draw(dot: str, fmt: Format) -> bytes:
-    """Draw DOT text in process, without a file or a program.
-
-    Parameters
-    ----------
-    dot : str
-        As `alignment_dot` returns it.
-    fmt : {'svg', 'png', 'dot'}
-        ``dot`` gives the text itself.
-
-    Returns
-    -------
-    bytes
-        The picture.
-    """
-    if fmt == "dot":
-        return dot.encode()
-    import pygraphviz
-
-    with pygraphviz.AGraph(string=dot) as graph:
-        return bytes(graph.draw(format=fmt, prog="dot"))

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from flowplan.engine.results import VERDICTS, Entry, Verdict
 from flowplan.model.masks import Mask
 from flowplan.report.charts import ChainDrawing, chain_drawing
-from flowplan.report.viewbase import Base, LayerName, capability, counted, per_million, plain
+from flowplan.report.viewbase import NBSP, Base, LayerName, capability, counted, per_million, plain
 from flowplan.report.viewhops import HopBook, HopFigures, chain_text, compared_words
 
 WORDS: dict[Verdict, str] = {"pass": "pass", "tight": "tight", "fail": "fail", "unjudged": "not judged"}
@@ -54,8 +54,6 @@ class WorstView:
     drawing: ChainDrawing
     hops: tuple[HopRow, ...]
     several: bool
-    exact: str
-    plain: str
     compared: str
 
 
@@ -75,7 +73,9 @@ def answer_view(base: Base, book: HopBook) -> AnswerView:
     counts = result.counts
     judged = sum(counts.values()) - counts["unjudged"]
     pairs = counted(len(base.pair_places), "pair")
-    detail = f"{counted(judged, 'check')} on {pairs}; a check is one pair of layers on one axis."
+    left_out = f", {counts['unjudged']} of them not judged" if counts["unjudged"] and judged else ""
+    checks = counted(len(result.entries), "check")
+    detail = f"{checks} on {pairs}{left_out}. A check is one pair of layers on one axis."
     worst = result.worst
     return AnswerView(
         _headline(counts, judged),
@@ -90,7 +90,7 @@ def _headline(counts: dict[Verdict, int], judged: int) -> str:
         return "Nothing is judged: no pair has a drawn dimension or a limit."
     if counts["fail"]:
         verb = "fails" if counts["fail"] == 1 else "fail"
-        return f"{counts['fail']} of {counted(judged, 'check')} {verb}."
+        return f"{counted(counts['fail'], 'check')} of {judged} {verb}."
     if counts["tight"]:
         verb = "is" if counts["tight"] == 1 else "are"
         return f"No check fails; {counts['tight']} of {judged} {verb} tight."
@@ -98,17 +98,26 @@ def _headline(counts: dict[Verdict, int], judged: int) -> str:
 
 
 def point_words(entry: Entry) -> str:
-    """Return where the figures of an entry are taken."""
+    """Return where the figures of an entry are taken [mm]."""
     if entry.point is None:
         return "the same everywhere"
     at = entry.point
-    return f"field ({plain(at.X)}, {plain(at.Y)}), site ({plain(at.x)}, {plain(at.y)}) mm"
+    field, site = (f"({plain(a)},{NBSP}{plain(b)})" for a, b in ((at.X, at.Y), (at.x, at.y)))
+    return f"field{NBSP}{field}, site{NBSP}{site}"
 
 
-def hop_words(base: Base, hop: HopFigures, axis: str) -> str:
+def overlay_words(book: HopBook, entry: Entry) -> str:
+    """Return the random part of an overlay in a sentence, with what plain chain RSS makes of it."""
+    base, unit = book.base, book.base.result.flow.unit
+    words = f"The random part of their overlay is {base.plus_minus(entry.overlay.random)} {unit}"
+    if entry.chain_rss is not None and len(entry.chain.layers) > 2:
+        words += f"; plain RSS along the chain gives {base.plus_minus(entry.chain_rss)} {unit}"
+    return f"{words}. {compared_words(book, entry)}"
+
+
+def hop_words(base: Base, hop: HopFigures) -> str:
     """Return how the child gets its place."""
-    is_mask = isinstance(base.result.flow.layers[hop.child], Mask)
-    return f"reads along {axis}" if is_mask else f"follows along {axis}"
+    return "reads" if isinstance(base.result.flow.layers[hop.child], Mask) else "follows"
 
 
 def _worst(base: Base, book: HopBook, entry: Entry) -> WorstView:
@@ -131,11 +140,9 @@ def _worst(base: Base, book: HopBook, entry: Entry) -> WorstView:
         chain=chain_text(entry.chain),
         through=base.names[entry.chain.through],
         drawing=chain_drawing(entry.chain, tuple(_hop_label(base, hop) for hop in hops)),
-        hops=tuple(_hop_row(base, hop, entry.axis) for hop in hops),
+        hops=tuple(_hop_row(base, hop) for hop in hops),
         several=entry.chain.one_of_several,
-        exact=base.length(entry.overlay.random),
-        plain=base.length(entry.chain_rss),
-        compared=compared_words(book, entry),
+        compared=overlay_words(book, entry),
     )
 
 
@@ -144,11 +151,11 @@ def _hop_label(base: Base, hop: HopFigures) -> str:
     return f"±{base.length(need)}" if need or not hop.parts.offset else base.signed(hop.parts.offset)
 
 
-def _hop_row(base: Base, hop: HopFigures, axis: str) -> HopRow:
+def _hop_row(base: Base, hop: HopFigures) -> HopRow:
     return HopRow(
         base.names[hop.child],
         base.names[hop.reference],
-        hop_words(base, hop, axis),
+        hop_words(base, hop),
         base.signed(hop.parts.offset),
         base.length(hop.parts.bound),
         base.length(hop.parts.random),

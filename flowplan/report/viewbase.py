@@ -14,6 +14,7 @@ from flowplan.report.records import in_unit
 
 MINUS = "\N{MINUS SIGN}"
 NONE = "\N{EN DASH}"
+NBSP = "\N{NO-BREAK SPACE}"
 #: Figures of the middle of a report show this many significant digits.
 _DIGITS = 4
 #: No figure is shown finer than this.
@@ -143,6 +144,14 @@ def per_million(probability: float | None) -> str:
 def plain(value: float) -> str:
     """Return a number as a person would write it."""
     return f"{value:.6g}".replace("-", MINUS)
+
+
+def listed(words: Iterable[str], most: int) -> str:
+    """Return words as a list in a sentence; beyond `most` and one more they are counted."""
+    named = list(words)
+    if len(named) > most + 1:
+        return f"{', '.join(named[:most])} and {len(named) - most} more"
+    return " and ".join(filter(None, (", ".join(named[:-1]), *named[-1:])))
 
 
 def counted(n: int, one: str, many: str = "") -> str:

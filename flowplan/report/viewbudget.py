@@ -12,7 +12,7 @@ from flowplan.engine.results import Entry
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.terms import Kind
 from flowplan.report.charts import bar
-from flowplan.report.viewbase import NONE, Base, percent
+from flowplan.report.viewbase import NBSP, NONE, Base, percent
 
 #: Rows of their own; what is smaller stands together in the row of the rest.
 SHOWN = 6
@@ -171,8 +171,8 @@ class BudgetBook:
         bound = sum(error for kind, error in errors if kind == "bound")
         offset = sum(error for kind, error in errors if kind == "offset")
         words = [self.base.plus_minus(random)] if random else []
-        words += [f"{self.base.plus_minus(bound)} bound"] if bound else []
-        words += [f"{self.base.signed(offset)} offset"] if offset else []
+        words += [f"{self.base.plus_minus(bound)}{NBSP}bound"] if bound else []
+        words += [f"{self.base.signed(offset)}{NBSP}offset"] if offset else []
         share = percent(float(sizes.share[list(rest), column].sum())) if random else NONE
         return Amount(", ".join(words) or NONE, share, bar((random + bound) / full))
 

@@ -12,7 +12,7 @@ from flowplan.engine.results import Entry, Parts
 from flowplan.engine.sources import FloatArray
 from flowplan.model.base import AXES, Axis
 from flowplan.model.masks import SelfAligned
-from flowplan.report.viewbase import Base, percent
+from flowplan.report.viewbase import Base, listed, percent
 
 #: Figures closer than this share are called equal.
 _EQUAL = 5e-4
@@ -127,19 +127,19 @@ def compared_words(book: HopBook, entry: Entry) -> str:
     """
     base, plain, exact = book.base, entry.chain_rss, entry.overlay.random
     if plain is None:
-        return "References are averaged, so there is no single chain to add up by hand."
+        return "References are averaged, so plain RSS along one chain does not apply."
     if plain == 0 and exact == 0:
         layers = base.result.flow.layers
         follows = any(isinstance(layers.get(name), SelfAligned) for name in entry.chain.layers)
         why = "one follows the other by itself" if follows else "nothing random comes between them"
-        return f"Both are 0: {why}."
+        return f"Exact and plain RSS are both 0: {why}."
+    if len(entry.chain.layers) == 2:
+        return "The chain is a single hop, so plain RSS says the same."
     if abs(plain - exact) <= _EQUAL * max(plain, exact):
-        return "Both agree: no source acts on two hops of this chain in a way that matters."
+        return "Plain RSS agrees: no source acts on two hops of this chain in a way that matters."
     too_high = plain > exact
     names = dict.fromkeys(name for name, excess in book.double_counted(entry) if (excess > 0) == too_high)
-    named = ", ".join([*names][:_NAMED])
-    if len(names) > _NAMED:
-        named += f" and {len(names) - _NAMED} more"
+    named = listed(names, _NAMED)
     by = f"{base.length(abs(plain - exact))} {base.result.flow.unit}"
     share = "" if math.isclose(exact, 0.0) else f" ({percent(abs(plain - exact) / exact)})"
     if too_high:

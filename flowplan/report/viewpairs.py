@@ -7,7 +7,7 @@ from flowplan.engine.results import Entry, Verdict
 from flowplan.model.flow import BASES, Basis
 from flowplan.model.pairs import AnyPair
 from flowplan.report.viewanswer import WORDS, point_words
-from flowplan.report.viewbase import NONE, Base, capability, per_million
+from flowplan.report.viewbase import NBSP, NONE, Base, capability, per_million
 from flowplan.report.viewbudget import BudgetBook, BudgetRow
 from flowplan.report.viewhops import HopBook, chain_text, compared_words
 from flowplan.report.viewmap import MapView
@@ -164,17 +164,17 @@ def _facts(base: Base, entries: list[Entry]) -> tuple[Fact, ...]:
     if limit == "Drawn":
         facts.append(row("Must remain", lambda e: base.length(e.keep)))
     facts += [
-        row("Known offset, worse side", lambda e: base.signed(e.residual.offset)),
+        row("Offset, worse side", lambda e: base.signed(e.residual.offset)),
         row("Bounds", lambda e: base.plus_minus(e.residual.bound)),
         row(f"Random {at}", lambda e: base.plus_minus(e.residual.random)),
     ]
     facts += [_basis_fact(base, entries, basis) for basis in BASES]
     facts += [
-        row(f"Overlay alone, random {at}", lambda e: base.plus_minus(e.overlay.random)),
-        row("The same by plain chain RSS", lambda e: _chain_rss(base, e)),
+        row(f"Overlay {at}, exact", lambda e: base.plus_minus(e.overlay.random)),
+        row(f"Overlay {at}, plain RSS", lambda e: _chain_rss(base, e)),
         row("Cpk", lambda e: capability(e.cpk)),
         row("Fails, ppm", lambda e: per_million(e.fail_probability)),
-        row("Worst point", point_words),
+        row("Worst point, mm", point_words),
     ]
     return tuple(facts)
 
@@ -187,7 +187,7 @@ def _basis_fact(base: Base, entries: list[Entry], name: Basis) -> Fact:
     flow = base.result.flow
     cells = []
     for e in entries:
-        need = f"need {base.length(e.need.on(name))}"
-        cells.append(need if e.margin is None else f"{need}, margin {base.signed(e.margin.on(name))}")
+        need = f"need{NBSP}{base.length(e.need.on(name))}"
+        cells.append(need if e.margin is None else f"{need}, margin{NBSP}{base.signed(e.margin.on(name))}")
     chosen = name == flow.basis
     return Fact(f"Basis {name}" + (" (verdict)" if chosen else ""), tuple(cells), chosen)

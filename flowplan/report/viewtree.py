@@ -1,20 +1,34 @@
 """The alignment tree as the report shows it: the drawing, and the same in words."""
 
+import math
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
-from flowplan.report.tree import alignment_dot, draw
+from flowplan.model.base import AXES
+from flowplan.report.layout import draw
+from flowplan.report.tree import alignment_dot, edges_of
 from flowplan.report.viewbase import Base, counted
 
 _COMMENT = re.compile(r"<!--.*?-->\s*|<title>.*?</title>\s*", re.DOTALL)
 _SHIFT = re.compile(r"translate\(\S+ (\S+)\)")
 _NODE = re.compile(r'class="node (?!step).*?</g>', re.DOTALL)
 _TEXT = re.compile(r'<text [^>]*? y="(\S+?)"')
-#: What fits on a printed page [pt], and how far a box reaches above and below its lines of text.
-_PAGE, _ABOVE, _BELOW = 700, 18, 12
+#: A drawing up to the first height is shrunk to one printed page, a taller one is cut to the second [pt].
+_ONE_PAGE, _PAGE = 1000, 700
+#: How far a box reaches above and below its lines of text [pt].
+_ABOVE, _BELOW = 18, 12
 _SIZE = re.compile(r'<svg width="(\d+)pt" height="(\d+)pt"')
+
+
+@dataclass(frozen=True, slots=True)
+class PageSlice:
+    """A part of the drawing from `top` down, over its whole width [pt]."""
+
+    top: int
+    width: int
+    height: int
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,13 +41,17 @@ class TreeView:
         Markup that Graphviz wrote; it escapes the text of labels itself.
     summary : str
         What the drawing shows, in a sentence.
-    slices : tuple of str
-        View boxes that show a tall drawing page by page, cut between rows; empty for one page.
+    marks : frozenset of str
+        What occurs in the drawing and needs a line in its legend: kinds of edge, ``selfaligned``,
+        ``averaged``, ``back``.
+    slices : tuple of PageSlice
+        A tall drawing page by page, cut between rows; empty for one page.
     """
 
     svg: str
     summary: str
-    slices: tuple[str, ...]
+    marks: frozenset[str]
+    slices: tuple[PageSlice, ...]
 
 
 def tree_view(base: Base) -> TreeView:
@@ -45,11 +63,23 @@ def tree_view(base: Base) -> TreeView:
         layers += f" and {counted(len(flow.self_aligned), 'self-aligned feature')}"
     summary = f"Alignment tree of {layers}, in process order from top to bottom"
     svg = draw(dot, "svg").decode()
-    return TreeView(inline_svg(svg, summary), summary, page_slices(svg))
+    return TreeView(inline_svg(svg, summary), summary, _marks(base), page_slices(svg))
 
 
-def page_slices(svg: str) -> tuple[str, ...]:
-    """Return view boxes that cut a tall drawing into pages, never through a layer.
+def _marks(base: Base) -> frozenset[str]:
+    flow, graph = base.result.flow, base.result.engine.graph
+    found: set[str] = {edge.kind for edge in edges_of(flow, graph)}
+    if flow.self_aligned:
+        found.add("selfaligned")
+    if any(graph.is_averaged(name, axis=axis) for name in flow.layers for axis in AXES):
+        found.add("averaged")
+    if any(mask.side == "back" for mask in flow.masks):
+        found.add("back")
+    return frozenset(found)
+
+
+def page_slices(svg: str) -> tuple[PageSlice, ...]:
+    """Return the parts that cut a tall drawing into pages of about one height, never through a layer.
 
     Parameters
     ----------
@@ -57,16 +87,24 @@ def page_slices(svg: str) -> tuple[str, ...]:
         Graphviz's drawing of the tree, its y axis shifted so that the drawing's foot is 0.
     """
     size, shift = _SIZE.search(svg), _SHIFT.search(svg)
-    if size is None or shift is None or int(size[2]) <= _PAGE:
+    if size is None or shift is None or int(size[2]) <= _ONE_PAGE:
         return ()
     width, height = int(size[1]), int(size[2])
-    rows = sorted({_row_of(node, float(shift[1])) for node in _NODE.findall(svg)})
-    cuts, foot = [0.0], 0.0
+    gaps = _gaps(sorted({_row_of(node, float(shift[1])) for node in _NODE.findall(svg)}))
+    n = math.ceil(height / _PAGE)
+    wanted = (height * i / n for i in range(1, n))
+    cuts = {min(gaps, key=lambda gap: abs(gap - want)) for want in wanted} if gaps else set()
+    return tuple(PageSlice(round(a), width, round(b - a)) for a, b in pairwise([0, *sorted(cuts), height]))
+
+
+def _gaps(rows: Sequence[tuple[float, float]]) -> list[float]:
+    """Return the middles of the gaps between rows of boxes [pt]."""
+    found, foot = [], rows[0][1] if rows else 0.0
     for top, bottom in rows:
-        if bottom > cuts[-1] + _PAGE and foot > cuts[-1]:
-            cuts.append((foot + top) / 2)
+        if top > foot:
+            found.append((foot + top) / 2)
         foot = max(foot, bottom)
-    return tuple(f"0 {a:.4g} {width} {b - a:.4g}" for a, b in pairwise([*cuts, float(height)]))
+    return found
 
 
 def _row_of(node: str, shift: float) -> tuple[float, float]:

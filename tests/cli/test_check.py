@@ -127,8 +127,8 @@ def test_what_is_no_flow_file_gets_one_message(run, tmp_path):
         ("missing.yaml", "missing.yaml:1:1: no such file [FP101]"),
         ("folder", "folder:1:1: is a folder, not a flow file [FP101]"),
         ("large.yaml", "large.yaml:1:1: larger than 4 MB, which no flow file needs [FP103]"),
-        ("binary.yaml", "binary.yaml:2:118: not UTF-8 text [FP102]"),
-        ("latin.yaml", "latin.yaml:1:7: not UTF-8 text [FP102]"),
+        ("binary.yaml", "binary.yaml:1:1: not text: it holds zero bytes [FP102]"),
+        ("latin.yaml", "latin.yaml:1:7: not UTF-8 text: the byte B5 (hexadecimal) [FP102]"),
         ("empty.yaml", "empty.yaml:1:1: the file is empty [FP108]"),
         ("", "flowplan: no flow file is named [FP602]"),
     ]:

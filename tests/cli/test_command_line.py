@@ -12,7 +12,11 @@ import pytest
 import flowplan
 from tests.cli.terminal import FLOWPLAN, on_a_terminal
 
-COMMANDS = ["check", "margins", "chain", "tree", "report", "new", "schema"]
+COMMANDS = [
+    *("check", "margins", "chain", "tree", "report"),
+    *("compare", "remedies", "levers", "propose"),
+    *("new", "schema"),
+]
 STYLE = re.compile(r"\x1b\[[0-9;]*m")
 
 
@@ -53,7 +57,7 @@ def test_a_faulty_flow_gives_status_2_to_every_command(run, command):
     Path("bad.yaml").write_text("flow: [\n")
     result = run(command, "bad.yaml")
     assert (result.exit_code, result.stdout) == (2, "")
-    assert result.stderr.startswith("bad.yaml:2:1: ")
+    assert result.stderr.startswith("bad.yaml:1:8: ")
 
 
 def test_an_unforeseen_fault_is_one_line_that_names_the_way_to_see_more(run, flow, monkeypatch):

@@ -57,10 +57,16 @@ def test_more_values_than_a_flow_can_hold_are_told():
 
 
 def test_a_flood_of_mistakes_is_cut_after_two_hundred():
-    masks = "".join(f"  - {{id: M{i}, tool: t, aligns_to: wafer}}\n" for i in range(500))
-    done = check("flow: Estuary\ntools: {}\nmasks:\n" + masks)
+    masks = "".join(f"  - {{id: M{i}, tool: t{i}, aligns_to: wafer}}\n" for i in range(500))
+    done = check("flow: Estuary\ntools: {s: {}}\nmasks:\n" + masks)
     assert done.returncode == 2
-    assert (
-        done.stderr.count("unknown tool 't' [FP301]") == 199
-    )  # the warning that no pair is judged comes first
-    assert done.stderr.splitlines()[-2:] == ["… and 301 more", "500 errors, 1 warning"]
+    assert done.stderr.count("unknown tool 't") == 198  # two warnings come first
+    assert done.stderr.splitlines()[-2:] == ["… and 302 more", "500 errors, 2 warnings"]
+
+
+def test_one_mistake_in_many_places_is_shown_once():
+    masks = "".join(f"  - {{id: M{i}, tool: stepr, aligns_to: wafer}}\n" for i in range(12))
+    done = check("flow: Estuary\ntools: {stepper: {}}\nmasks:\n" + masks + "pairs: []\n")
+    assert done.stderr.count("unknown tool 'stepr'") == 1
+    assert "    the same in 11 more places, lines 5, 6, 7, 8, 9, 10, 11, 12, …" in done.stderr.splitlines()
+    assert done.stderr.splitlines()[-1] == "12 errors, 2 warnings"

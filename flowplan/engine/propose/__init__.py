@@ -1,9 +1,19 @@
 """The best assignment of alignment references, with proof."""
 
+import time
 from collections.abc import Iterable
 
+import numpy as np
+
+from flowplan.engine.analysis import analyse
+from flowplan.engine.propose.atoms import atoms_of
+from flowplan.engine.propose.clock import Clock
 from flowplan.engine.propose.proposal import Ladder, Progress, Proposal, ReferenceChange, Stopper, Watcher
-from flowplan.engine.propose.score import GOALS, Goal
+from flowplan.engine.propose.score import GOALS, Goal, Scale
+from flowplan.engine.propose.solve import Problem, Solution
+from flowplan.errors import Diagnostic, UsageError, nearest
+from flowplan.model.candidates import Choice, choices_of, same_readings
+from flowplan.model.edits import Readings, with_references
 from flowplan.model.flow import Flow
 
 __all__ = ["GOALS", "Goal", "Ladder", "Progress", "Proposal", "ReferenceChange", "ladder", "propose"]
@@ -60,7 +70,13 @@ def propose(
         When a named mask does not exist (FP601), no pair is judged or a number makes no sense
         (FP602), a mask is both freed and pinned (FP603), or no mask has a choice (FP604).
     """
-    raise NotImplementedError
+    began = time.monotonic()
+    _check(goal, changes, time_limit)
+    choices = choices_of(flow, free=free, free_all=free_all, pin=pin, same_reference=same_reference)
+    problem = _problem(flow, choices, goal)
+    clock = Clock.start(goal, time_limit, progress, stop)
+    found = problem.solve(clock, changes)
+    return _proposal(flow, problem, goal, changes, found, began)
 
 
 def ladder(
@@ -94,4 +110,71 @@ def ladder(
     UsageError
         As for `propose`.
     """
-    raise NotImplementedError
+    began = time.monotonic()
+    _check(goal, None, time_limit)
+    choices = choices_of(flow, free=free, free_all=free_all, pin=pin, same_reference=same_reference)
+    problem = _problem(flow, choices, goal)
+    clock = Clock.start(goal, time_limit, progress, stop)
+    last = problem.solve(clock)
+    most = int(problem.block.changed(last.plan[None]).sum())
+    steps, start = [], None
+    for limit in range(most):
+        found = problem.solve(clock, limit, start)
+        steps.append(_proposal(flow, problem, goal, limit, found, began))
+        start, began = found.plan, time.monotonic()
+    steps.append(_proposal(flow, problem, goal, None, last, began))
+    fewest = next((i for i, step in enumerate(steps) if not step.counts_after["fail"]), None)
+    certain = fewest is None or all(step.proved for step in steps[: fewest + 1])
+    return Ladder(tuple(steps), fewest, certain and goal != "yield")
+
+
+def _check(goal: str, changes: int | None, time_limit: float | None) -> None:
+    problems = []
+    if goal not in GOALS:
+        problems.append(Diagnostic("FP602", f"unknown goal {goal!r}", nearest(goal, GOALS)))
+    if changes is not None and changes < 0:
+        problems.append(Diagnostic("FP602", f"{changes} masks cannot change", "give 0 or more"))
+    if time_limit is not None and not time_limit > 0:
+        problems.append(Diagnostic("FP602", f"a time limit of {time_limit:g} s", "give more than 0"))
+    if problems:
+        raise UsageError(problems)
+
+
+def _problem(flow: Flow, choices: tuple[Choice, ...], goal: Goal) -> Problem:
+    atoms = atoms_of(flow, choices)
+    largest = max((float(axis.rows.scale.max(initial=0.0)) for axis in atoms.values()), default=0.0)
+    if not any(len(axis.rows.room) for axis in atoms.values()):
+        hint = "add pairs with a drawn dimension or a limit"
+        raise UsageError([Diagnostic("FP602", "no pair is judged, so no plan is better than another", hint)])
+    return Problem(atoms, choices, Scale.of(goal, largest))
+
+
+def _proposal(
+    flow: Flow, problem: Problem, goal: Goal, limit: int | None, found: Solution, began: float
+) -> Proposal:
+    changes = tuple(_changes(flow, problem.choices, found))
+    planned = with_references(flow, {(c.mask, c.axis): c.after for c in changes})
+    sign = -1.0 if goal == "fails" else 1.0
+    return Proposal(
+        goal=goal,
+        limit=limit,
+        proved=found.proved,
+        bound=sign * float(found.bound[0]),
+        before=analyse(flow),
+        after=analyse(planned),
+        changes=changes,
+        nodes=found.nodes,
+        closed=1.0 if found.proved else min(found.closed, np.nextafter(1.0, 0.0)),
+        seconds=time.monotonic() - began,
+    )
+
+
+def _changes(flow: Flow, choices: tuple[Choice, ...], found: Solution) -> list[ReferenceChange]:
+    masks = {mask.id: mask for mask in flow.masks}
+    changes = []
+    for choice, option in zip(choices, found.plan, strict=True):
+        for axis, after in zip(choice.axes, choice.options[option], strict=True):
+            before: Readings = masks[choice.mask].aligns_to.on(axis)
+            if option and not same_readings(before, after):
+                changes.append(ReferenceChange(choice.mask, axis, before, after))
+    return changes

@@ -140,6 +140,22 @@ class AxisAtoms:
         placed = (self.layer, self.pattern, self.marks, self.reads.parts)
         return any(bool(parts.sizes[..., BOUND].any()) for parts in placed)
 
+    @cached_property
+    def has_marks(self) -> bool:
+        """Whether any error of marks is not shared."""
+        return bool(self.marks.sizes.any())
+
+    @cached_property
+    def has_signed(self) -> bool:
+        """Whether any offset or shared source is handed down to other masks."""
+        handed = (self.layer, self.marks, self.reads.parts)
+        return any(bool(parts.signed.any()) for parts in handed)
+
+    @cached_property
+    def most_read(self) -> IntArray:
+        """The most references that any option of each mask reads, shape (n_masks,)."""
+        return np.asarray((self.reads.weights > 0).sum(axis=2).max(axis=1), dtype=np.int64)
+
     def need(self, sizes: FloatArray) -> FloatArray:
         """Return what errors of these variances, bounds and linear sums take on the basis [nm]."""
         random = self.confidence * np.sqrt(sizes[..., VARIANCE])

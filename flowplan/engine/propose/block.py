@@ -137,7 +137,9 @@ class Block:
         undecided = open_parts(axis, plans, of_mask.sum(axis=2) == 1)
         rows = axis.rows
         known = np.abs(undecided[:, rows.second] - undecided[:, rows.first]).max(axis=2) < 1e-12
-        return np.where(known[..., None] & of_mask[np.arange(len(of_mask))[:, None], masks], exact[..., None], reach)
+        return np.where(
+            known[..., None] & of_mask[np.arange(len(of_mask))[:, None], masks], exact[..., None], reach
+        )
 
     def open_variables(self, allowed: BoolArray, plan: IntArray, row: int) -> IntArray:
         """Return the undecided variables on which a pair rests under a plan, the latest mask first.

@@ -71,14 +71,9 @@ class AxisBounds:
         self.power = np.tile([2 if kind == VARIANCE else 1 for kind in self.kinds], len(self.sites))
         self.layer, self.pattern, self.marks = (self._flat(p) for p in (axis.layer, axis.pattern, axis.marks))
         self.reads = self._flat(axis.reads.parts)
-        self.is_marked = bool(self.marks.sizes.any())
-        carried = (self.layer, self.marks, self.reads)
-        self.is_signed = any(parts.signed.any() for parts in carried)
+        self.is_marked, self.is_signed = axis.has_marks, axis.has_signed
         self.n_signed = self.layer.signed.shape[-1]
-        averaged = (
-            (axis.reads.weights[..., 1:] != 0).any(axis=(1, 2)) if axis.reads.masks.shape[2] > 1 else None
-        )
-        self.averaged = np.zeros(axis.n_masks, dtype=bool) if averaged is None else averaged
+        self.averaged = axis.most_read > 1
         rows = axis.rows
         self.late, self.early = np.maximum(rows.first, rows.second), np.minimum(rows.first, rows.second)
         self.of_mask = [np.flatnonzero((self.late == i) & (self.early != i)) for i in range(axis.n_masks)]
@@ -160,7 +155,9 @@ class AxisBounds:
     def _walk(self, allowed: BoolArray) -> tuple["_Tables", FloatArray, FloatArray, FloatArray]:
         """Fill the tables in process order; return the rows' overlays by option of the later mask."""
         nodes, n, width = allowed.shape
-        t = _Tables.empty(nodes, n, len(self.power), self.n_signed if self.is_signed else 0, marked=self.is_marked)
+        t = _Tables.empty(
+            nodes, n, len(self.power), self.n_signed if self.is_signed else 0, marked=self.is_marked
+        )
         least = self._least_own(allowed) if self.averaged.any() else None
         barred = np.where(allowed, 0.0, np.inf)[..., None, None]
         sizes = np.zeros((nodes, len(self.late), width, len(self.power)))

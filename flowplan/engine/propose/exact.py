@@ -80,7 +80,7 @@ def _residuals(axis: AxisAtoms, plans: IntArray) -> tuple[FloatArray, FloatArray
         (frames[:, second] - frames[:, first], own),
         (marks[:, second] - marks[:, first], axis.marks.sizes),
     ):
-        if not what.any():
+        if what is axis.marks.sizes and not axis.has_marks:
             continue
         total[..., VARIANCE] += coefficient**2 @ what[..., VARIANCE]
         if axis.basis == "linear" or axis.has_bounds:
@@ -113,15 +113,16 @@ def frames_of(axis: AxisAtoms, plans: IntArray) -> tuple[FloatArray, FloatArray,
     which = np.arange(len(plans))
     for i in range(1, n):
         option = plans[:, i]
-        signed[:, i] = axis.layer.signed[i] + reads.parts.signed[i, option]
-        for k in range(reads.masks.shape[2]):
-            weight = reads.weights[i, option, k]
-            if not weight.any():
-                break
-            reference = reads.masks[i, option, k]
+        if axis.has_signed:
+            signed[:, i] = axis.layer.signed[i] + reads.parts.signed[i, option]
+        for k in range(int(axis.most_read[i])):
+            weight, reference = reads.weights[i, option, k], reads.masks[i, option, k]
             frames[:, i] += weight[:, None] * frames[which, reference]
-            marks[:, i] += weight[:, None] * marks[which, reference]
-            marks[which, i, reference] += weight
-            signed[:, i] += weight[:, None, None] * (signed[which, reference] + axis.marks.signed[reference])
+            if axis.has_marks:
+                marks[:, i] += weight[:, None] * marks[which, reference]
+                marks[which, i, reference] += weight
+            if axis.has_signed:
+                passed = signed[which, reference] + axis.marks.signed[reference]
+                signed[:, i] += weight[:, None, None] * passed
         frames[:, i, i] = 1.0
     return frames, marks, signed

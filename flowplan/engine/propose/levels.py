@@ -3,25 +3,28 @@
 What is found soon decides how much can be pruned. So before the tree is searched for anything better
 than the best plan, short searches aim higher: between the first figure in which the best plan falls
 short of what the bound allows, and the bound. Each either finds a plan that good or shows that there is
-none, and mostly fast: the higher the aim, the fewer options are left.
+none, and mostly fast: the higher the aim, the fewer options are left. Then the tree is searched until
+nothing is left that is better in that figure, and the next figure follows.
 """
 
-import time
 from dataclasses import dataclass, field
 
 import numpy as np
 
 from flowplan.engine.propose.block import Block
+from flowplan.engine.propose.clock import Clock
 from flowplan.engine.propose.prune import Best, Rules, narrow
-from flowplan.engine.propose.search import Node, Search, Watch, nodes_of
+from flowplan.engine.propose.search import Node, Search, nodes_of
 from flowplan.engine.sources import BoolArray, FloatArray
 
-#: Nodes after which an aim is given up.
-_SHORT = 150
-_STEPS = 6
+#: Aims taken at one figure.
+_AIMS = 6
+#: Nodes after which an aim is given up and started anew with what was learned, and at last given up.
+_SHORT = (60, 120, 240)
+#: Nodes after which the search of a level is started anew with what was learned; doubled each time.
+_LONG = 500
 #: Open nodes of which each is shaved.
 _FEW = 4
-DEBUG = False
 
 
 @dataclass(slots=True)
@@ -36,7 +39,7 @@ class Solver:
         The best plan so far.
     rules : Rules
         What is wanted.
-    watch : callable
+    clock : Clock
         Asked whether to go on.
     nodes : int
         Nodes bounded.
@@ -47,46 +50,56 @@ class Solver:
     block: Block
     best: Best
     rules: Rules
-    watch: Watch
+    clock: Clock
     nodes: int = 0
-    weight: FloatArray = field(default_factory=lambda: np.zeros(0))
     frontier: list[Node] = field(default_factory=list)
+    _failures: FloatArray = field(default_factory=lambda: np.zeros(0))
 
     def run(self, root: BoolArray) -> bool:
-        """Search all plans of a node; return whether the best is proved."""
-        one = np.ones(1)
-        self.weight = np.zeros(len(root))
-        self.frontier = nodes_of(narrow(self.block, root[None], self.best, self.rules), one)
-        while self.frontier and self.watch(self):
+        """Search all plans of a node, shape (n_variables, n_options); return whether the best is proved."""
+        self._failures = np.zeros(len(root))
+        self.frontier = nodes_of(narrow(self.block, root[None], self.best, self.rules), np.ones(1))
+        while self.frontier and self.clock():
             if len(self.frontier) <= _FEW:
-                self.frontier = self._shaved(self.best)
-            if not self.frontier:
-                break
-            level = min(self._gap(node.bound) for node in self.frontier)
-            if DEBUG: print("   level", level, self.best.score[:3], len(self.frontier), (self.frontier[0].allowed.sum(1) > 1).sum(), self.nodes)
-            if level < len(self.best.score):
-                self._aim(level)
-            cap = 500
-            while self.watch(self):
-                search = Search(self.block, self.best, self.rules, lambda s: self.watch(self) and s.nodes < cap, self.weight)
-                ended = search.run(self.frontier, level=level)
-                self.nodes += search.nodes
-                if ended or search.found: break
-                cap*=2
-            if DEBUG: print("      settle", level, search.nodes, len(search.aside), search.found)
-            self.best, self.frontier = search.best, search.left()
+                self._shave()
+            if self.frontier:
+                level = min(self._gap(node.bound) for node in self.frontier)
+                if level < len(self.best.score):
+                    self._aim(level)
+                self._settle(level)
         return not self.frontier
 
-    def _shaved(self, best: Best) -> list[Node]:
+    @property
+    def bound(self) -> FloatArray:
+        """A score that no plan exceeds."""
+        bounds = [node.bound for node in self.frontier]
+        top = max(bounds, key=lambda score: tuple(score.tolist()), default=self.best.score)
+        return top if self.block.scale.compare(top, self.best.score) > 0 else self.best.score
+
+    @property
+    def closed(self) -> float:
+        """Share of the tree that is settled."""
+        return 1.0 - sum(node.weight for node in self.frontier)
+
+    def _search(self, best: Best, most: float) -> Search:
+        ties = self.rules if best is self.best else Rules(self.rules.limit, "none")
+        before = self.nodes
+
+        def go_on(search: Search) -> bool:
+            self.clock.nodes += search.nodes - (self.nodes - before)
+            self.nodes = before + search.nodes
+            return search.nodes < most and self.clock()
+
+        return Search(self.block, best, ties, go_on, self._failures)
+
+    def _shave(self) -> None:
         left = []
         for node in self.frontier:
-            search = Search(self.block, best, self.rules, self.watch, self.weight)
+            search = self._search(self.best, np.inf)
             found = search.shave(node.allowed)
-            self.nodes += search.nodes
-            if search.found:
-                self.best = search.best
+            self.best = search.best
             left += nodes_of(found, np.array([node.weight]))
-        return left
+        self.frontier = left
 
     def _gap(self, bound: FloatArray) -> int:
         apart = np.abs(bound - self.best.score) > self.block.scale.same
@@ -95,31 +108,40 @@ class Solver:
     def _aim(self, level: int) -> None:
         """Close in on the best figure at a level from both sides."""
         high = max(node.bound[level] for node in self.frontier)
-        for step in range(_STEPS):
+        for k in range(_AIMS):
             low = self.best.score[level]
-            if high - low <= self.block.scale.same:
+            if high - low <= self.block.scale.same or not self.clock():
                 return
-            aim = low + (high - low) * 0.5 if step < _STEPS - 1 else low
-            target = np.full(len(self.best.score), -np.inf)
-            target[:level], target[level] = self.best.score[:level], aim
-            goal = Best(self.best.plan, target, self.best.changes)
-            ended = False
-            for cap in (60, 120, 240):
-                search = Search(
-                    self.block,
-                    goal,
-                    Rules(self.rules.limit, "none"),
-                    lambda s, c=cap: s.nodes < c,
-                    self.weight,
-                )
-                t = time.time()
-                ended = search.run(self.frontier, first=True)
-                self.nodes += search.nodes
-                if DEBUG: print("      aim", level, aim, 'found' if search.found else ('none' if ended else 'gave up'), search.nodes, time.time() - t)
-                if search.found or ended: break
-            if search.found:
-                self.best = search.best
+            aim = low if k == _AIMS - 1 else (low + high) / 2
+            ended, better = self._try_aim(level, aim)
+            if better is not None:
+                self.best = better
             elif ended:
                 high = aim
             else:
                 return
+
+    def _try_aim(self, level: int, aim: float) -> tuple[bool, Best | None]:
+        """Look for a plan that is better than an aim; tell whether the search came to an end."""
+        target = np.full(len(self.best.score), -np.inf)
+        target[:level], target[level] = self.best.score[:level], aim
+        for most in _SHORT:
+            search = self._search(Best(self.best.plan, target, self.best.changes), most)
+            ended = search.run(self.frontier, first=True)
+            if search.found or ended:
+                break
+        return ended, search.best if search.found else None
+
+    def _settle(self, level: int) -> None:
+        """Search until all that is left can only be better in a later figure."""
+        most = _LONG
+        while True:
+            search = self._search(self.best, most)
+            ended = search.run(self.frontier, level=level)
+            if ended or search.found or self.clock.stopped:
+                break
+            most *= 2
+        left = search.left()
+        if search.found and not ended and len(self.frontier) <= _FEW < len(left):
+            left = self.frontier  # what was found prunes these better than the many left
+        self.best, self.frontier = search.best, left

@@ -79,4 +79,3 @@ def pivots(reads: Reads, allowed: BoolArray, late: IntArray, early: IntArray) ->
         node, row, a, e, marks, turned = (x[~stop] for x in (node, row, a, e, marks, turned))
     found.append((node, row, a, e, marks, turned))
     return Pivots(*(np.concatenate(parts) for parts in zip(*found, strict=True)))
-

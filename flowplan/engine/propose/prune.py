@@ -116,7 +116,12 @@ def narrow(block: Block, allowed: BoolArray, best: Best, rules: Rules) -> Narrow
         if not len(work):
             break
         step = _Step(block, some, best, rules)
-        allowed[work], bound[work], reach[work], options[work] = step.left, step.bound, step.reach, step.options
+        allowed[work], bound[work], reach[work], options[work] = (
+            step.left,
+            step.bound,
+            step.reach,
+            step.options,
+        )
         alive[work] = step.alive
         work = work[step.alive & (step.left != some).any(axis=(1, 2))]
     return Narrowed(alive, allowed, bound, reach, options)

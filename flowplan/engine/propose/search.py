@@ -79,7 +79,7 @@ class Search:
         Share of the tree that is settled.
     found : bool
         Whether anything was found that beats what was to be beaten.
-    weight : ndarray, shape (n_variables,)
+    failures : ndarray, shape (n_variables,)
         How often splitting each variable led nowhere; such variables are split first.
     aside : list of Node
         Nodes put aside by the last run.
@@ -89,7 +89,7 @@ class Search:
     best: Best
     rules: Rules
     watch: Watch
-    weight: FloatArray
+    failures: FloatArray
     nodes: int = 0
     closed: float = 0.0
     found: bool = False
@@ -126,12 +126,6 @@ class Search:
     def left(self) -> list[Node]:
         """Return the nodes that are not settled."""
         return [*reversed(self._stack), *self.aside]
-
-    @property
-    def bound(self) -> FloatArray:
-        """A score that no plan exceeds."""
-        bounds = [node.bound for node in self._stack]
-        return max([self.best.score, *bounds], key=lambda score: tuple(score.tolist()))
 
     def shave(self, allowed: BoolArray) -> Narrowed:
         """Try every option of every variable alone and drop those with which nothing is wanted.
@@ -191,7 +185,7 @@ class Search:
         found = narrow(self.block, allowed, self.best, self.rules)
         self.nodes += len(weight)
         self.closed += float(weight[~found.alive].sum())
-        np.add.at(self.weight, split[~found.alive], 1.0)
+        np.add.at(self.failures, split[~found.alive], 1.0)
         self._stack += sorted(nodes_of(found, weight), key=lambda node: tuple(node.bound.tolist()))
 
     def _split(self, nodes: list[Node], level: int | None) -> None:
@@ -243,7 +237,7 @@ class Search:
             variables += self.block.open_variables(node, plan, int(row)).tolist()
         if variables:
             found = np.array(variables)
-            return int(found[(node[found].sum(axis=1) / (1 + self.weight[found])).argmin()])
+            return int(found[(node[found].sum(axis=1) / (1 + self.failures[found])).argmin()])
         undecided = np.flatnonzero(node.sum(axis=1) > 1)
         if not len(undecided) or (self.rules.ties == "none" and not down.any()):
             return None
