@@ -45,6 +45,15 @@ class CaseText:
     sentences: tuple[str, ...]
 
 
+@dataclass(frozen=True, slots=True)
+class RemediesText:
+    """Everything that a page shows of what helps."""
+
+    unit: str
+    cases: tuple[CaseText, ...]
+    left_out: int
+
+
 class RemedyWords:
     """Puts the remedies of one flow into words.
 

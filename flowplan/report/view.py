@@ -6,6 +6,8 @@ from importlib.metadata import PackageNotFoundError, version
 
 from flowplan.engine.analysis import Result
 from flowplan.report.comparison import ComparisonText
+from flowplan.report.proposal import LadderText
+from flowplan.report.remedytext import RemediesText
 from flowplan.report.viewanswer import AnswerView, answer_view
 from flowplan.report.viewbase import Base, plain
 from flowplan.report.viewbudget import BudgetBook
@@ -41,6 +43,8 @@ class Extras:
     """What helps to choose among plans; None where there is nothing to show."""
 
     comparison: ComparisonText | None = None
+    remedies: RemediesText | None = None
+    ladder: LadderText | None = None
 
 
 @dataclass(frozen=True, slots=True)
