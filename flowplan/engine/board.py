@@ -1,6 +1,6 @@
 """All judged margins of a flow as plain arrays, for judging many small changes of it."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -9,7 +9,7 @@ from flowplan.engine.parts import Kernel
 from flowplan.engine.placement import Placement
 from flowplan.engine.points import Sites, sites_of
 from flowplan.engine.propose.worst_case import extreme_sites
-from flowplan.engine.residual import Residuals, Row, residuals, rows_of
+from flowplan.engine.residual import Residuals, Row, drawn_and_keep, residuals, rows_of
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.base import AXES, Axis
 from flowplan.model.flow import Flow
@@ -46,18 +46,18 @@ class Board:
     sites: Sites
 
     @classmethod
-    def of(cls, flow: Flow, placement: Placement) -> "Board":
-        """Return the board of a placed flow."""
-        every = rows_of(flow, flow.pairs)
-        size: dict[tuple[str, str, str, Axis], tuple[float, float]] = {}
-        for axis in AXES:
-            on_axis = tuple(row for row in every if row.axis == axis)
-            res = residuals(flow, placement, on_axis, axis)
-            size.update(zip(map(_key, on_axis), zip(res.drawn, res.keep, strict=True), strict=True))
-        rows = tuple(row for row in every if not np.isnan(size[_key(row)][0]))
-        drawn, keep = np.array([size[_key(row)] for row in rows]).reshape(-1, 2).T
+    def of(cls, flow: Flow) -> "Board":
+        """Return the board of a flow."""
+        every = [(row, drawn_and_keep(flow, row)) for row in rows_of(flow, flow.pairs)]
+        judged = [(row, lengths) for row, lengths in every if not np.isnan(lengths[0])]
+        rows = tuple(row for row, _ in judged)
+        drawn, keep = np.array([lengths for _, lengths in judged]).reshape(-1, 2).T
         places = {a: np.array([i for i, r in enumerate(rows) if r.axis == a], dtype=np.int64) for a in AXES}
         return cls(flow, rows, places, drawn, keep, _extreme(sites_of(flow)))
+
+    def of_edited(self, flow: Flow) -> "Board":
+        """Return the same rows in an edited flow; its pairs, drawn values and fields must be the same."""
+        return replace(self, flow=flow)
 
     def residuals(self, placement: Placement, axis: Axis) -> Residuals:
         """Return the residuals of the rows on an axis, in the order of `places`."""
@@ -77,9 +77,10 @@ class Board:
             return np.zeros(0)
         return np.asarray(margins_over_sites(res, kernel, self.sites, self.flow).min(axis=1))
 
-    def settled(self, margins: FloatArray) -> FloatArray:
-        """Return margins with what is nothing but rounding set to 0, shape (..., n_rows)."""
-        terms = 2 * (self.drawn + np.abs(self.keep)) + np.abs(margins)
+    def settled(self, margins: FloatArray, rows: IntArray | None = None) -> FloatArray:
+        """Return margins of all or some rows, with what is nothing but rounding set to 0."""
+        which = slice(None) if rows is None else rows
+        terms = 2 * (self.drawn[which] + np.abs(self.keep[which])) + np.abs(margins)
         return np.where(np.abs(margins) <= _DUST * terms, 0.0, margins)
 
     def failing(self, margins: FloatArray) -> int:
@@ -94,10 +95,6 @@ class Board:
     def grain(self) -> FloatArray:
         """Changes of a margin smaller than this count as none, shape (n_rows,) [nm]."""
         return _SAME * np.maximum(self.drawn + np.abs(self.keep), 1e-6)
-
-
-def _key(row: Row) -> tuple[str, str, str, Axis]:
-    return row.pair.name, row.first, row.second, row.axis
 
 
 def _extreme(sites: Sites) -> Sites:

@@ -67,7 +67,7 @@ class LeverSpace:
         for quoted in zeros:
             placed = with_size(placed, quoted, quoted.quantity(1.0, flow.unit))
         placement = place(placed, apart=True)
-        self.board = Board.of(flow, placement)
+        self.board = Board.of(flow)
         off = {(q.keys, q.kind, axis) for q in zeros for axis in q.axes}
         self._axes = {axis: _Axis(self.board, placement, axis, off) for axis in AXES}
         self.margins = np.zeros(len(self.board.rows))

@@ -63,7 +63,7 @@ class RereadSpace:
                 self._read(mask, axis, reading)
         self.placement: Placement = assemble(flow, self.walk)
         _, self._columns = self.walk.book.tables()
-        self.board = Board.of(flow, self.placement)
+        self.board = Board.of(flow)
         self._share = {axis: shares(flow, axis) for axis in AXES}
         self._kernel = {
             axis: Kernel.of(self.placement.modes[axis], self.placement.sources, flow.sigma) for axis in AXES

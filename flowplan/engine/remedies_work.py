@@ -1,5 +1,6 @@
 """Works out the remedies of entry after entry; what serves several entries is done once."""
 
+from collections import defaultdict
 from collections.abc import Callable, Iterator
 from functools import cached_property
 
@@ -9,14 +10,14 @@ from flowplan.engine.levers_space import LeverSpace, Sized
 from flowplan.engine.margin import verdict_of
 from flowplan.engine.placement import place
 from flowplan.engine.remedies_changes import Change, Redraw, Reread, Resize, SelfAlign, apply
-from flowplan.engine.remedies_options import plain, reread_options
-from flowplan.engine.remedies_reread import Moved, Options, RereadSpace
+from flowplan.engine.remedies_options import reread_options
+from flowplan.engine.remedies_reread import RereadSpace
+from flowplan.engine.remedies_rereads import rereads
 from flowplan.engine.remedies_result import Case, Effect, Kind, Remedy
 from flowplan.engine.residual import Row
 from flowplan.engine.results import Entry, Verdict
 from flowplan.engine.sources import FloatArray
-from flowplan.model.base import AXES, Axis
-from flowplan.model.edits import Readings
+from flowplan.model.base import Axis
 from flowplan.model.flow import Flow
 from flowplan.model.masks import Mask
 
@@ -40,56 +41,32 @@ class Workshop:
         self._place = {_key(row): i for i, row in enumerate(self.board.rows)}
         self._order = list(flow.layers)
         self._self_aligned: dict[SelfAlign, FloatArray] = {}
-        self._steps = [0, 1 + len(needy)]
+        self._options = reread_options(flow, self.rows)
+        self._steps = [0, 1 + len(self._options) // 2 + len(needy)]
         self._progress = progress
+        self._step()
 
     @cached_property
-    def rereads(self) -> list[tuple[Reread, FloatArray, Effect]]:
-        """Every other reading, with all margins and its effect."""
-        options = reread_options(self.flow, self.rows)
-        space = RereadSpace(self.flow, options)
-        self._steps[1] += len(options)
-        found = []
-        for mask in dict.fromkeys(mask for mask, _ in options):
-            moved = {}
-            for axis in AXES:
-                moved[axis] = space.moved(mask, axis)
-                self._step()
-            found += [(c, m, self._effect(m)) for c, m in self._of_mask(mask, options, moved)]
+    def _rereads(self) -> dict[int, list[Remedy]]:
+        """Other readings that help each row of the board that is in need."""
+        space = RereadSpace(self.flow, self._options)
+        needy = frozenset(self._place[_key(row)] for row in self.rows)
+        found: dict[int, list[Remedy]] = defaultdict(list)
+        for mask in dict.fromkeys(mask for mask, _ in self._options):
+            for at, remedy in rereads(space, mask, needy):
+                found[at].append(remedy)
+            self._step()
         return found
-
-    def _of_mask(
-        self, mask: str, options: Options, moved: dict[Axis, Moved]
-    ) -> Iterator[tuple[Reread, FloatArray]]:
-        """Yield the readings of one mask on x, on y and, where both may, on both axes alike."""
-        before = next(m for m in self.flow.masks if m.id == mask).aligns_to
-        both: dict[object, dict[Axis, int]] = {}
-        for axis in AXES:
-            for number, option in enumerate(options[mask, axis]):
-                both.setdefault(plain(option), {})[axis] = number
-        for numbers in both.values():
-            for axes in [(axis,) for axis in numbers] + ([AXES] if len(numbers) > 1 else []):
-                margins = self.margins.copy()
-                for axis in axes:
-                    margins[moved[axis].rows] = moved[axis].margins[numbers[axis]]
-                after = tuple(options[mask, axis][numbers[axis]] for axis in axes)
-                yield Reread(mask, axes, tuple(before.on(axis) for axis in axes), after), margins
 
     def case(self, entry: Entry) -> Case:
         """Return one entry with what helps it."""
         row = Row(entry.pair, *entry.layers, entry.axis)
         at = self._place[_key(row)]
-        found = [*self._rereads(row, at), *self._self_align(row, at), *self._rule(row, at), *self._sizes(at)]
+        found = [*self._rereads[at], *self._self_align(row, at), *self._rule(row, at), *self._sizes(at)]
         gains = (r for r in found if r.margin > self.margins[at] + self.board.grain[at])
         ranked = tuple(sorted(gains, key=worth))
         self._step()
         return Case(entry, float(self.board.settled(self.margins)[at]), ranked)
-
-    def _rereads(self, row: Row, at: int) -> Iterator[Remedy]:
-        for change, margins, effect in self.rereads:
-            if row.axis in change.axes:
-                readings = change.after[change.axes.index(row.axis)]
-                yield self._remedy(_reread_kind(change.mask, readings, row), change, margins, effect, at)
 
     def _self_align(self, row: Row, at: int) -> Iterator[Remedy]:
         earlier, later = sorted((row.first, row.second), key=self._order.index)
@@ -100,8 +77,7 @@ class Workshop:
         change = SelfAlign(later, earlier, "opposite" if row.pair.rule in ("spacing", "overlap") else "same")
         if change not in self._self_aligned:
             flow = apply(self.flow, change)
-            placement = place(flow)
-            self._self_aligned[change] = Board.of(flow, placement).margins(placement)
+            self._self_aligned[change] = self.board.of_edited(flow).margins(place(flow))
         margins = self._self_aligned[change]
         yield self._remedy("self-align", change, margins, self._effect(margins), at)
 
@@ -188,12 +164,6 @@ def worth(remedy: Remedy) -> tuple[float, ...]:
         -round(remedy.margin, 6),
         len(change.axes) if isinstance(change, Reread) else 0,
     )
-
-
-def _reread_kind(mask: str, readings: Readings, row: Row) -> Kind:
-    if len(readings) > 1:
-        return "average"
-    return "direct" if {mask, readings[0].mask} == {row.first, row.second} else "reference"
 
 
 def _key(row: Row) -> tuple[str, str, str, Axis]:

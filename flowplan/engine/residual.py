@@ -93,7 +93,7 @@ def residuals(flow: Flow, placement: Placement, rows: tuple[Row, ...], axis: Axi
     signs = np.array([row.pair.edge_signs for row in rows], dtype=np.float64).reshape(-1, 2)
     edge = placement.edge[axis]
     edges = signs[:, :1] * edge[first] + signs[:, 1:] * edge[second]
-    drawn, keep = zip(*(_drawn_and_keep(flow, row) for row in rows), strict=True) if rows else ((), ())
+    drawn, keep = zip(*(drawn_and_keep(flow, row) for row in rows), strict=True) if rows else ((), ())
     return Residuals(
         rows,
         placement.overlay(axis, first, second),
@@ -103,7 +103,8 @@ def residuals(flow: Flow, placement: Placement, rows: tuple[Row, ...], axis: Axi
     )
 
 
-def _drawn_and_keep(flow: Flow, row: Row) -> tuple[float, float]:
+def drawn_and_keep(flow: Flow, row: Row) -> tuple[float, float]:
+    """Return a row's drawn dimension or limit, NaN for none, and what must remain [nm]."""
     pair = row.pair
     if isinstance(pair, Overlay):
         limit = np.nan if pair.limit is None else pair.limit.on(row.axis).in_base(flow.unit)
