@@ -18,6 +18,8 @@ from flowplan.model.flow import Flow
 _DUST = 1e-12
 #: A margin that changes by less than this share of what was drawn stays as it is.
 _SAME = 1e-9
+#: ... or, where next to nothing was drawn, of this length [nm].
+_LEAST = 1.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -94,7 +96,7 @@ class Board:
     @property
     def grain(self) -> FloatArray:
         """Changes of a margin smaller than this count as none, shape (n_rows,) [nm]."""
-        return _SAME * np.maximum(self.drawn + np.abs(self.keep), 1e-6)
+        return _SAME * np.maximum(self.drawn + np.abs(self.keep), _LEAST)
 
 
 def _extreme(sites: Sites) -> Sites:

@@ -108,8 +108,10 @@ class RemedyWords:
             tone = ", its edges moving against that layer's" if change.tone == "opposite" else ""
             return f"Make {change.layer} self-aligned to {change.parent}{tone}"
         if isinstance(change, Redraw):
-            drawn, old = self._up(change.after), self.figures.text(change.before)
-            return f"Draw {drawn} instead of {old} {self.flow.unit} along {change.axis}"
+            new, old = self._up(change.after), self.figures.text(change.before)
+            is_limit = next(p for p in self.flow.pairs if p.name == change.pair).rule == "overlay"
+            verb = "Allow" if is_limit else "Draw"
+            return f"{verb} {new} instead of {old} {self.flow.unit} along {change.axis}"
         return self._resize(change)
 
     def _reread(self, change: Reread) -> str:

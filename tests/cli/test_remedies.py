@@ -59,7 +59,7 @@ def test_sentence_can_be_pasted_into_a_review(run, flow):
     )
     rule = next(r for r in found if r["kind"] == "rule")
     assert rule["text"].startswith(
-        "Draw 57.74 instead of 50.00 nm along x: the margin of third along x goes from -1.96 to 5.77 nm "
+        "Allow 57.74 instead of 50.00 nm along x: the margin of third along x goes from -1.96 to 5.77 nm "
         "(fail to pass); that also leaves the reserve (51.97 leaves 0);"
     )
 
@@ -105,3 +105,13 @@ def test_unknown_pair_is_refused_with_the_nearest(run, flow):
 
 def test_help_shows_an_example(run):
     assert "Example: flowplan remedies" in run("remedies", "--help").stdout
+
+
+def test_rule_with_a_drawn_dimension_is_drawn_wider(run, flow, tmp_path):
+    drawn = "rule: spacing, between: [B, D], drawn: 50, axes: x"
+    text = (tmp_path / flow).read_text().replace("rule: overlay, between: [B, D], limit: 50, axes: x", drawn)
+    (tmp_path / "drawn.yaml").write_text(text)
+    document = json.loads(run("remedies", "drawn.yaml", "--pair", "third", "--format", "json").stdout)
+    rule = next(r for r in document["cases"][0]["remedies"] if r["kind"] == "rule")
+    assert rule["text"].startswith("Draw 57.74 instead of 50.00 nm along x:")
+    assert rule["change"] == {"pair": "third", "axis": "x", "from": 50.0, "to": rule["for_reserve"]}
