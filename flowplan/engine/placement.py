@@ -17,12 +17,13 @@ A self-aligned feature takes over F, P and M of what it follows, so its D is its
 
 import math
 from collections import defaultdict
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
+from flowplan.engine.marksites import mirrored, scalars
 from flowplan.engine.sources import (
     FloatArray,
     IntArray,
@@ -30,12 +31,16 @@ from flowplan.engine.sources import (
     Source,
     SourceBook,
     action,
+    basis_over,
+    deviation,
 )
 from flowplan.model.base import AXES, WAFER, Axis
 from flowplan.model.flow import Flow
+from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Mask, Reading, SelfAligned
-from flowplan.model.paths import Keys, layer_keys, reading_keys, term_keys
-from flowplan.model.terms import SHAPE_PER_AXIS, Kind, Shape, SizeParts, Term, quoted
+from flowplan.model.paths import PER_MARK, Keys, layer_keys, reading_axes, reading_keys, term_keys
+from flowplan.model.terms import SHAPE_PER_AXIS, Kind, Level, Shape, Size, SizeParts, Term, quoted
+from flowplan.model.varies import edge_level, reading_level, term_level
 
 Amounts = list[tuple[int, float]]
 PartName = str
@@ -150,7 +155,11 @@ class Walk:
         for reading, weight in weighted:
             factor = weight * _side(mask, "shift", axis)
             for label, size, place in self._read(mask, reading, axis):
-                found += self._shift(label, mask.id, size, axis, factor, place)
+                if isinstance(size, MarkSites):
+                    serves = reading_axes(mask, reading, axis)
+                    found += self._fitted(label, mask, size, axis, serves, weight, place)
+                    continue
+                found += self._shift(label, mask.id, size, axis, factor, place, reading_level)
         return found
 
     def collect_edge(self, layer: Mask | SelfAligned) -> None:
@@ -161,10 +170,10 @@ class Walk:
                 continue
             place = layer_keys(layer, name)
             for axis in AXES:
-                amounts = self._shift(label, layer.id, size, axis, share, place)
+                amounts = self._shift(label, layer.id, size, axis, share, place, edge_level)
                 self.parts[layer.id, "edge", axis] += amounts
 
-    def _read(self, mask: Mask, reading: Reading, axis: Axis) -> Iterator[tuple[str, SizeParts, Keys]]:
+    def _read(self, mask: Mask, reading: Reading, axis: Axis) -> Iterator[tuple[str, Size | MarkSites, Keys]]:
         tool = self.flow.tools[mask.tool]
         to_wafer = reading.mask == WAFER
         size = tool.wafer_alignment if to_wafer else tool.alignment
@@ -177,15 +186,49 @@ class Walk:
         if isinstance(marks, Mask) and marks.mark_reading is not None:
             yield f"mark reading of {marks.id}", marks.mark_reading, layer_keys(marks, "mark_reading")
 
-    def _shift(self, label: str, of: str, size: SizeParts, axis: Axis, factor: float, place: Keys) -> Amounts:
+    def _shift(
+        self,
+        label: str,
+        of: str,
+        size: SizeParts,
+        axis: Axis,
+        factor: float,
+        place: Keys,
+        level: Callable[[SizeParts, Kind], Level],
+    ) -> Amounts:
         """Amounts of an error of one layer on one axis that nothing else shares."""
         found: Amounts = []
         for kind, per_axis in size.parts():
             value = per_axis.on(axis).in_base(self.flow.unit)
             if value:
-                source = Source(label, of, kind, "shift", value)
+                source = Source(label, of, kind, "shift", value, level(size, kind))
                 index = self.book.source((of, label, kind, axis), source, (place, kind, axis))
                 found.append((self.book.mode(axis, index, 0), factor * value))
+        return found
+
+    def _fitted(
+        self, label: str, mask: Mask, sites: MarkSites, axis: Axis, serves: str, weight: float, place: Keys
+    ) -> Amounts:
+        """Amounts on one axis of an alignment fitted to marks, fresh for each reading."""
+        found: Amounts = []
+        unit, per_mark = self.flow.unit, sites.per_mark
+        varies = per_mark.varies or sites.over
+        for kind, per_axis in per_mark.parts():
+            read = {a: per_axis.on(a).in_base(unit) for a in AXES}
+            # A sum over marks is close to normal whatever a single mark's readings are.
+            as_random = deviation(kind, self.flow.sigma) / deviation("random", self.flow.sigma)
+            for scalar in scalars(sites, unit, alike=read["x"] == read["y"]):
+                value, leads = as_random * read[scalar.readings], scalar.leads
+                name = label if leads.shape == "shift" else f"{label}: {leads.name}"
+                source = Source(name, mask.id, "random", leads.shape, abs(scalar.size) * value, varies)
+                moves = scalar.amounts[axis] if mask.side == "front" else mirrored(scalar.amounts[axis], axis)
+                if not value or not moves.any():
+                    continue
+                key = (mask.id, label, kind, leads.name, scalar.readings, serves)
+                index = self.book.source(key, source, ((*place, PER_MARK), kind, scalar.readings))
+                for basis in np.flatnonzero(moves):
+                    mode = self.book.mode(axis, index, basis_over(int(basis), sites.over))
+                    found.append((mode, weight * value * float(moves[basis])))
         return found
 
     def _term(self, mask: Mask, tool: str | None, name: str, term: Term) -> Iterator[tuple[Axis, int, float]]:
@@ -200,7 +243,8 @@ class Walk:
                 scalar = axis if term.shape in SHAPE_PER_AXIS else None
                 size = quoted(per_axis, scalar).in_base(self.flow.unit)
                 for key, label, of, share in _shares(mask, tool, name, term, kind):
-                    source = Source(label, of, kind, term.shape, size)
+                    level = term_level(term, kind, of_tool=tool is not None, common=key[0] != "own")
+                    source = Source(label, of, kind, term.shape, size, level)
                     index = self.book.source((*key, kind, scalar), source, (place, kind, axis))
                     amount = sign * _side(mask, term.shape, axis) * share * value
                     yield axis, self.book.mode(axis, index, basis), amount

@@ -11,13 +11,14 @@ so what both share cancels by plain subtraction, to exactly 0.
 
 import math
 from collections.abc import Hashable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from flowplan.model.base import AXES, Axis
-from flowplan.model.terms import Kind, Shape
+from flowplan.model.terms import SHAPE_ACTION, Kind, Level, Shape
+from flowplan.model.varies import rarer
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
@@ -25,18 +26,8 @@ BoolArray = NDArray[np.bool_]
 
 #: Basis functions of position: constant, field x, field y, wafer x, wafer y (field centre + site).
 N_BASIS = 5
-_CONSTANT, _X, _Y = 0, 1, 2
+_CONSTANT = 0
 _WAFER_SHIFT = 2
-
-#: What a scalar of each shape does along x and along y: (basis, sign), None for nothing.
-#: rotation (-th*y, th*x); magnification (m*x, m*y); scale (sx*x, sy*y); skew (-phi*y, 0).
-_ACTION: dict[Shape, dict[Axis, tuple[int, int] | None]] = {
-    "shift": {"x": (_CONSTANT, 1), "y": (_CONSTANT, 1)},
-    "rotation": {"x": (_Y, -1), "y": (_X, 1)},
-    "magnification": {"x": (_X, 1), "y": (_Y, 1)},
-    "scale": {"x": (_X, 1), "y": (_Y, 1)},
-    "skew": {"x": (_Y, -1), "y": None},
-}
 
 
 def action(shape: Shape, over: str, axis: Axis) -> tuple[int, int] | None:
@@ -51,10 +42,13 @@ def action(shape: Shape, over: str, axis: Axis) -> tuple[int, int] | None:
     axis : {'x', 'y'}
         Axis of the displacement.
     """
-    found = _ACTION[shape][axis]
-    if found is None or found[0] == _CONSTANT or over == "field":
-        return found
-    return found[0] + _WAFER_SHIFT, found[1]
+    found = SHAPE_ACTION[shape][axis]
+    return None if found is None else (basis_over(found[0], over), found[1])
+
+
+def basis_over(which: int, over: str) -> int:
+    """Return the basis function that 1, x or y (0, 1, 2) is over the field or over the wafer."""
+    return which if which == _CONSTANT or over == "field" else which + _WAFER_SHIFT
 
 
 def deviation(kind: Kind, sigma: float) -> float:
@@ -93,6 +87,8 @@ class Source:
         As in the flow file.
     size : float
         The size as quoted [nm, urad or ppm]; the largest where several places quote it.
+    varies : {'mask', 'lot', 'wafer', 'field'}
+        How often it is redrawn; the rarest where several places quote it. No margin depends on it.
     """
 
     name: str
@@ -100,6 +96,7 @@ class Source:
     kind: Kind
     shape: Shape
     size: float
+    varies: Level = "field"
 
 
 @dataclass(frozen=True, slots=True)
@@ -155,8 +152,11 @@ class SourceBook:
         index = self._by_key.setdefault(key, len(self.sources))
         if index == len(self.sources):
             self.sources.append(source)
-        elif abs(source.size) > abs(self.sources[index].size):
-            self.sources[index] = source
+            return index
+        known = self.sources[index]
+        varies = rarer(known.varies, source.varies)
+        larger = source if abs(source.size) > abs(known.size) else known
+        self.sources[index] = larger if larger.varies == varies else replace(larger, varies=varies)
         return index
 
     def mode(self, axis: Axis, source: int, basis: int) -> int:

@@ -9,9 +9,9 @@ from collections.abc import Callable, Iterator
 
 from flowplan.errors import Diagnostic, Path, nearest
 from flowplan.model.base import AXES, WAFER
+from flowplan.model.checkmarks import marks_fix_their_model, marks_have_room
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import MOST_FIELDS, too_many_fields, whole_fields
-from flowplan.model.masks import Mask, References
 from flowplan.model.terms import KINDS, Term
 
 Rule = Callable[[Flow], Iterator[Diagnostic]]
@@ -86,19 +86,12 @@ def _tools_exist(flow: Flow) -> Iterator[Diagnostic]:
             yield Diagnostic("FP309", message, "", ("tools", name), severity="warning")
 
 
-def _every_reference(mask: Mask) -> Iterator[tuple[Path, References]]:
-    """Yield what a mask reads and what it may read, each with its place in the mask."""
-    yield ("aligns_to",), mask.aligns_to
-    for k, candidate in enumerate(mask.may_align_to or ()):
-        yield ("may_align_to", k), candidate
-
-
 def _references_are_earlier(flow: Flow) -> Iterator[Diagnostic]:
     everything = [name for name, _ in _every_id(flow)]
     twice = {name for name, count in Counter(everything).items() if count > 1}
     order = {name: i for i, name in enumerate(flow.layers)}
     for i, mask in enumerate(flow.masks):
-        for where, references in _every_reference(mask):
+        for where, references in mask.every_reference():
             for axis in AXES:
                 for k, reading in enumerate(references.on(axis)):
                     path: Path = ("masks", i, *where, axis, k, "mask")
@@ -206,6 +199,11 @@ def _sources_are_one_thing(flow: Flow) -> Iterator[Diagnostic]:
         if other.shape != term.shape:
             message = f"source {term.source!r} is a {other.shape} elsewhere, a {term.shape} here"
             yield Diagnostic("FP307", message, "give it one shape, or another name", (*path, "source"))
+        if other.varies != term.varies:
+            said, here = (t.varies or "left open" for t in (other, term))
+            message = f"source {term.source!r} varies: {said} elsewhere, {here} here"
+            hint = "one error is redrawn equally often wherever it stands: say the same everywhere"
+            yield Diagnostic("FP307", message, hint, (*path, "source"))
         if _random_kinds(other) != _random_kinds(term):
             message = f"source {term.source!r} is quoted in other kinds elsewhere; they do not cancel"
             hint = "quote it with the same of " + ", ".join(KINDS[:3]) + " everywhere"
@@ -227,7 +225,7 @@ def _sizes_are_given(flow: Flow) -> Iterator[Diagnostic]:
         to_wafer += any(r.mask == WAFER for r in readings)
         path: Path = ("masks", i, "aligns_to")
         if tool.alignment is None:
-            for where, references in _every_reference(mask):
+            for where, references in mask.every_reference():
                 if any(r.alignment is None and r.mask != WAFER for a in AXES for r in references.on(a)):
                     what = f"{mask.id!r} {'reads' if where == ('aligns_to',) else 'may read'} marks"
                     yield _no_size(f"tools.{mask.tool}.alignment", what, ("masks", i, *where))
@@ -273,5 +271,7 @@ RULES: tuple[Rule, ...] = (
     _sources_are_one_thing,
     _sizes_are_given,
     _geometry_is_there,
+    marks_fix_their_model,
+    marks_have_room,
     _variants_have_names_of_their_own,
 )

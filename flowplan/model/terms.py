@@ -8,6 +8,7 @@ from pydantic_core import CoreSchema
 from flowplan.model.base import (
     AXES,
     QUANTITY_SCHEMA,
+    Axis,
     Described,
     Id,
     Model,
@@ -24,6 +25,9 @@ Kind = Literal["random", "uniform", "bound", "offset"]
 KINDS: tuple[Kind, ...] = ("random", "uniform", "bound", "offset")
 Shape = Literal["shift", "rotation", "magnification", "scale", "skew"]
 Enters = Literal["layer", "pattern", "marks"]
+#: How often an error is redrawn, the rarest first.
+Level = Literal["mask", "lot", "wafer", "field"]
+LEVELS: tuple[Level, ...] = ("mask", "lot", "wafer", "field")
 
 #: What a shape is measured in, and whether each axis has a scalar of its own.
 SHAPE_DIMENSION: dict[Shape, Dimension] = {
@@ -34,6 +38,15 @@ SHAPE_DIMENSION: dict[Shape, Dimension] = {
     "skew": "angle",
 }
 SHAPE_PER_AXIS: frozenset[Shape] = frozenset({"shift", "scale"})
+#: What a scalar of each shape does along x and along y at (x, y): (which of 1, x, y; sign), None for nothing.
+#: rotation (-th*y, th*x); magnification (m*x, m*y); scale (sx*x, sy*y); skew (-phi*y, 0).
+SHAPE_ACTION: dict[Shape, dict[Axis, tuple[int, int] | None]] = {
+    "shift": {"x": (0, 1), "y": (0, 1)},
+    "rotation": {"x": (2, -1), "y": (1, 1)},
+    "magnification": {"x": (1, 1), "y": (2, 1)},
+    "scale": {"x": (1, 1), "y": (2, 1)},
+    "skew": {"x": (2, -1), "y": None},
+}
 
 
 class SizeParts(Model):
@@ -47,6 +60,11 @@ class SizeParts(Model):
         None, description="At most this in size, sign unknown, the same on every wafer."
     )
     offset: PerAxis | None = Field(None, description="Known and signed.")
+    varies: Level | None = Field(
+        None,
+        description="How often it is redrawn: once for the `mask` set, once a `lot`, a `wafer` or a `field`; "
+        "a margin does not depend on it, yield by field and wafer does.",
+    )
 
     @model_validator(mode="before")
     @classmethod
