@@ -24,7 +24,8 @@ from flowplan.model.flow import Flow
 from flowplan.model.paths import Keys, Quoted, quoted_sizes
 from flowplan.model.terms import Kind
 
-#: Where a size is quoted, its kind, and the axis along which it acts.
+#: Where a size is quoted, its kind, and which of its two numbers it is: for most errors the number
+#: of the axis along which it acts; an alignment from mark sites acts along both with each.
 Place = tuple[Keys, Kind, Axis]
 
 
@@ -63,9 +64,13 @@ class LeverSpace:
         self.flow = flow
         self.sizes = quoted_sizes(flow)
         zeros = [q for q in self.sizes if not q.in_base(flow.unit)]
+        # A size of 0 must not come to equal its other axis: what is alike in x and y acts as one.
+        self._one = 1.0
+        while any(q.in_base(flow.unit) == self._one for q in self.sizes):
+            self._one /= 2
         placed = flow
         for quoted in zeros:
-            placed = with_size(placed, quoted, quoted.quantity(1.0, flow.unit))
+            placed = with_size(placed, quoted, quoted.quantity(self._one, flow.unit))
         placement = place(placed, apart=True)
         self.board = Board.of(flow)
         off = {(q.keys, q.kind, axis) for q in zeros for axis in q.axes}
@@ -77,8 +82,11 @@ class LeverSpace:
     def sized(self, quoted: Quoted) -> Sized:
         """Return one of `sizes` with its ramps."""
         size = quoted.in_base(self.flow.unit)
-        ramps = (self._axes[axis].ramp((quoted.keys, quoted.kind, axis)) for axis in quoted.axes)
-        return Sized(quoted, size or 1.0, 1.0 if size else 0.0, tuple(r for r in ramps if r is not None))
+        places = [(quoted.keys, quoted.kind, axis) for axis in quoted.axes]
+        ramps = (self._axes[axis].ramp(places) for axis in AXES)
+        return Sized(
+            quoted, size or self._one, 1.0 if size else 0.0, tuple(r for r in ramps if r is not None)
+        )
 
     def margins_at(self, sized: Sized, t: float) -> FloatArray:
         """Return the margin of every row of the board with one size changed, shape (n_rows,) [nm]."""
@@ -124,9 +132,10 @@ class _Axis:
         need = needs(self.bound, self.random, self.random)[self.flow.basis]
         self.margins = (self.room - need).min(axis=1) if len(self.rows) else np.zeros(0)
 
-    def ramp(self, place: Place) -> Ramp | None:
-        """Return what the size at a place does; None where no row depends on it."""
-        modes = self.modes_of.get(place, [])
+    def ramp(self, places: list[Place]) -> Ramp | None:
+        """Return what one size, standing at these places, does; None where no row depends on it."""
+        modes = [mode for place in places for mode in self.modes_of.get(place, [])]
+        is_bound = places[0][1] == "bound"
         rows = np.flatnonzero(self.by_place[:, modes].any(axis=1))
         if not len(rows):
             return None
@@ -138,8 +147,8 @@ class _Axis:
         return Ramp(
             self.rows[rows],
             self.room[rows],
-            (self.random if place[1] == "bound" else self.bound)[rows],
-            self._varying(own, rest, touched, is_bound=place[1] == "bound"),
+            (self.random if is_bound else self.bound)[rows],
+            self._varying(own, rest, touched, is_bound=is_bound),
             self.flow.basis,
         )
 

@@ -12,6 +12,7 @@ from flowplan.files.yamltext import plain_scalar
 from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.edits import Readings, with_references
 from flowplan.model.flow import Flow
+from flowplan.model.marksites import MarkSites, RingSites
 from flowplan.model.masks import Reading, References
 from flowplan.model.terms import SizeParts
 from flowplan.units import Quantity
@@ -45,9 +46,22 @@ def _reading_data(reading: Reading) -> Any:
     return reading.mask if len(data) == 1 else data
 
 
-def _size_data(size: SizeParts) -> Any:
+def _size_data(size: SizeParts | MarkSites) -> Any:
+    if isinstance(size, MarkSites):
+        return _sites_data(size)
     parts = {kind: _per_axis_data(value) for kind, value in size.parts()}
     return parts["random"] if [*parts] == ["random"] else parts
+
+
+def _sites_data(given: MarkSites) -> Any:
+    sites: Any
+    if isinstance(given.sites, RingSites):
+        ring = given.sites.ring
+        sites = {"ring": {"count": ring.count, "radius": _quantity_data(ring.radius)}}
+    else:
+        sites = [{"x": _quantity_data(site.x), "y": _quantity_data(site.y)} for site in given.sites]
+    data = {"per_mark": _size_data(given.per_mark), "sites": sites, "model": given.model}
+    return data if given.over == "wafer" else data | {"over": given.over}
 
 
 def _per_axis_data(value: PerAxis) -> Any:

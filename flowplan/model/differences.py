@@ -8,6 +8,7 @@ from pydantic import BaseModel
 
 from flowplan.model.base import AXES, PerAxis
 from flowplan.model.flow import Flow
+from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Follows, Reading, References, Tones
 from flowplan.model.terms import SizeParts, Term
 
@@ -149,8 +150,10 @@ def readings_text(readings: Iterable[Reading]) -> str:
     return " + ".join(parts)
 
 
-def size_text(size: SizeParts) -> str:
+def size_text(size: SizeParts | MarkSites) -> str:
     """Return a size as one would say it, such as ``30`` or ``random 30, bound 5``."""
+    if isinstance(size, MarkSites):
+        return f"{size}, {size_text(size.per_mark)} a mark"
     parts = size.parts()
     if len(parts) == 1 and parts[0][0] == "random":
         return str(parts[0][1])

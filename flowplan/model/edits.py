@@ -9,15 +9,16 @@ from typing import TypeVar
 
 from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.flow import Flow
+from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Follows, Mask, Reading, References, SelfAligned, Tone, Tones
 from flowplan.model.pairs import AnyPair
-from flowplan.model.paths import Keys, Quoted, reading_keys
+from flowplan.model.paths import PER_MARK, Keys, Quoted, reading_keys
 from flowplan.model.terms import Size, SizeParts
 from flowplan.model.tools import Tool
 from flowplan.units import Quantity
 
 Readings = tuple[Reading, ...]
-_AnySize = TypeVar("_AnySize", bound=SizeParts)
+_AnySize = TypeVar("_AnySize", bound=SizeParts | MarkSites)
 _Holder = TypeVar("_Holder", Tool, Mask, SelfAligned)
 
 
@@ -194,12 +195,14 @@ def _in_mask(mask: Mask, quoted: Quoted, size: Quantity) -> Mask:
 
 def _in_reading(mask: Mask, reading: Reading, axis: Axis, quoted: Quoted, size: Quantity) -> Reading:
     keys: Keys = reading_keys(mask, reading, axis)
-    if keys != quoted.keys or reading.alignment is None:
+    if keys != quoted.keys[: len(keys)] or reading.alignment is None:
         return reading
     return reading.model_copy(update={"alignment": _resized(reading.alignment, quoted, size)})
 
 
 def _resized(old: _AnySize, quoted: Quoted, size: Quantity) -> _AnySize:
+    if isinstance(old, MarkSites):
+        return old.model_copy(update={PER_MARK: _resized(old.per_mark, quoted, size)})
     before: PerAxis = getattr(old, quoted.kind)
     after = {axis: size if axis in quoted.axes else before.on(axis) for axis in AXES}
     return old.model_copy(update={quoted.kind: PerAxis.model_construct(x=after["x"], y=after["y"])})

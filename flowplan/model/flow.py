@@ -6,7 +6,9 @@ from typing import Annotated, Literal, Self
 
 from pydantic import BeforeValidator, Field, PrivateAttr
 
+from flowplan.errors import Path
 from flowplan.model.base import (
+    AXES,
     Described,
     Id,
     Model,
@@ -16,6 +18,7 @@ from flowplan.model.base import (
     Sigmas,
     refuse,
 )
+from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Mask, SelfAligned
 from flowplan.model.pairs import Pair
 from flowplan.model.terms import Shape, Term
@@ -150,7 +153,20 @@ class Flow(Described):
         """Shapes other than `shift` that occur in the flow."""
         terms = [t for tool in self.tools.values() for t in tool.terms.values()]
         terms += [t for mask in self.masks for t in mask.terms.values()]
-        return frozenset(t.shape for t in terms if t.shape != "shift")
+        fitted = (shape for _, sites in self.site_alignments() for shape in sites.shapes)
+        return frozenset(t.shape for t in terms if t.shape != "shift").union(fitted)
+
+    def site_alignments(self) -> Iterator[tuple[Path, MarkSites]]:
+        """Yield every alignment from mark sites with its place; one for both axes comes once for each."""
+        for name, tool in self.tools.items():
+            if isinstance(tool.alignment, MarkSites):
+                yield ("tools", name, "alignment"), tool.alignment
+        for i, mask in enumerate(self.masks):
+            for where, references in mask.every_reference():
+                for axis in AXES:
+                    for k, reading in enumerate(references.on(axis)):
+                        if isinstance(reading.alignment, MarkSites):
+                            yield ("masks", i, *where, axis, k, "alignment"), reading.alignment
 
 
 def _settle(waiting: list[SelfAligned], found: dict[str, Layer]) -> list[SelfAligned]:

@@ -1,11 +1,14 @@
 """Masks, what they align to, and features that a process step aligns by itself."""
 
+from collections.abc import Iterator
 from typing import Any, Literal
 
 from pydantic import Field, GetJsonSchemaHandler, model_validator
 from pydantic_core import CoreSchema
 
+from flowplan.errors import Path
 from flowplan.model.base import AXES, Axis, Described, Id, Model, PositiveNumber, one_or_more, refuse
+from flowplan.model.marksites import Alignment
 from flowplan.model.terms import Size, Term
 
 WEIGHT_TOLERANCE = 1e-6
@@ -18,7 +21,7 @@ class Reading(Model):
     weight: PositiveNumber | None = Field(
         None, description="Share in an average; all equal when left out, together 1."
     )
-    alignment: Size | None = Field(None, description="Replaces the tool's `alignment` for this reading.")
+    alignment: Alignment | None = Field(None, description="Replaces the tool's `alignment` for this reading.")
 
     @model_validator(mode="before")
     @classmethod
@@ -120,6 +123,12 @@ class Mask(Described):
     side: Literal["front", "back"] = Field(
         "front", description="`back`: exposed on the turned-over wafer, x reversed (SEMI M20)."
     )
+
+    def every_reference(self) -> Iterator[tuple[Path, References]]:
+        """Yield what the mask reads and what it may read, each with its place in the mask."""
+        yield ("aligns_to",), self.aligns_to
+        for k, candidate in enumerate(self.may_align_to or ()):
+            yield ("may_align_to", k), candidate
 
     @model_validator(mode="after")
     def _one_edge(self) -> "Mask":

@@ -5,7 +5,8 @@ A place is the way to it through the file, with masks, pairs and features by id:
 follows: in ``terms`` always, because a term may state several (``tools.stepper.terms.stage.random``);
 elsewhere only when it is not the plain ``random`` (``masks.GATE.cd.bound``). A reading's own alignment
 stands under its reference, ``masks.CONTACT.aligns_to.GATE.alignment``, and under its axis first where
-it serves that axis alone, ``masks.CONTACT.aligns_to.x.GATE.alignment``.
+it serves that axis alone, ``masks.CONTACT.aligns_to.x.GATE.alignment``. An alignment from mark sites
+quotes what reading one mark costs, ``tools.stepper.alignment.per_mark``.
 
 Offsets are known and signed, not sizes, and are left out. A number that is the same for x and y counts
 as one that serves both, however it is written.
@@ -14,15 +15,19 @@ as one that serves both, however it is written.
 import json
 from collections.abc import Iterator
 from dataclasses import dataclass
+from typing import Literal
 
 from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.flow import Flow, Layer
+from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Mask, Reading
 from flowplan.model.terms import SHAPE_DIMENSION, Kind, Shape, SizeParts, Term
 from flowplan.units import Quantity, convert
 
 #: The way to a size: group, id, and the keys below it.
 Keys = tuple[str, ...]
+#: The step below an alignment from mark sites.
+PER_MARK = "per_mark"
 #: Steps of the way to a reading's alignment that serves one axis alone.
 _ON_ONE_AXIS = 6
 
@@ -104,9 +109,15 @@ def term_keys(mask: Mask, tool: str | None, name: str) -> Keys:
 
 def reading_keys(mask: Mask, reading: Reading, axis: Axis) -> Keys:
     """Return the way to a reading's own alignment; the axis is a step where it serves that one alone."""
+    step = () if reading_axes(mask, reading, axis) == "xy" else (axis,)
+    return "masks", mask.id, "aligns_to", *step, reading.mask, "alignment"
+
+
+def reading_axes(mask: Mask, reading: Reading, axis: Axis) -> Literal["x", "y", "xy"]:
+    """Return the axes that one reading serves: the one it stands under, or both with its twin."""
     other = mask.aligns_to.on("y" if axis == "x" else "x")
     both = any(r.mask == reading.mask and r.alignment == reading.alignment for r in other)
-    return "masks", mask.id, "aligns_to", *(() if both else (axis,)), reading.mask, "alignment"
+    return "xy" if both else axis
 
 
 def quoted_sizes(flow: Flow) -> tuple[Quoted, ...]:
@@ -177,8 +188,14 @@ class _Sizes:
                     only = axis if len(keys) == _ON_ONE_AXIS else None
                     yield from self._parts(keys, reading.alignment, only)
 
-    def _parts(self, keys: Keys, size: SizeParts | None, only: Axis | None = None) -> Iterator[Quoted]:
+    def _parts(
+        self, keys: Keys, size: SizeParts | MarkSites | None, only: Axis | None = None
+    ) -> Iterator[Quoted]:
         if size is None:
+            return
+        if isinstance(size, MarkSites):
+            # Readings along both axes bear on a fit of which one axis is used.
+            yield from self._parts((*keys, PER_MARK), size.per_mark)
             return
         shape: Shape = size.shape if isinstance(size, Term) else "shift"
         for kind, per_axis in size.parts():

@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 
 from flowplan.model.base import AXES, PerAxis
+from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Mask, SelfAligned
 from flowplan.model.terms import SizeParts
 from flowplan.report.viewbase import NONE, Base, LayerName, percent
@@ -60,10 +61,12 @@ class FeatureView:
     settled: tuple[str, ...]
 
 
-def size_words(base: Base, size: SizeParts | None) -> str:
+def size_words(base: Base, size: SizeParts | MarkSites | None) -> str:
     """Return a size as the file quotes it, every part with its unit."""
     if size is None:
         return NONE
+    if isinstance(size, MarkSites):
+        return f"{size_words(base, size.per_mark)} a mark, {size}"
     unit, sigma = base.result.flow.unit, f"{base.result.flow.sigma:g}σ"
     how = {"random": f" ({sigma})", "uniform": " half-width, uniform", "bound": " bound", "offset": " offset"}
     words = []
