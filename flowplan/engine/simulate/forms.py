@@ -1,0 +1,184 @@
+"""The judged pairs as linear forms of the sources, at places of the field.
+
+A pair on one axis has the overlay e and the sum of edges E. What is left of the drawn dimension
+beyond what must be kept is, on the two sides, ``room + E + e`` and ``room + E - e``; the worse is
+
+    room + E - |e|        room = drawn - keep + the edges' known offset - the bounds at their worst sign
+
+e is affine in position, so over a field it is largest at a corner.
+"""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from flowplan.engine.analysis import Engine, Result
+from flowplan.engine.margin import settle
+from flowplan.engine.parts import Kernel
+from flowplan.engine.points import basis_at
+from flowplan.engine.residual import Residuals, Row, residuals
+from flowplan.engine.results import Entry
+from flowplan.engine.sources import N_BASIS, FloatArray
+from flowplan.model.base import AXES, Axis
+
+_ORIGIN = (0.0, 0.0, 0.0, 0.0)
+
+
+@dataclass(frozen=True, slots=True)
+class AxisRows:
+    """The judged rows of one axis."""
+
+    entries: tuple[Entry, ...]
+    residuals: Residuals
+    kernel: Kernel
+    n_sources: int
+
+    def by_source(self, amounts: FloatArray) -> FloatArray:
+        """Spread amounts of the axis's active sources over all sources."""
+        found = np.zeros((len(amounts), self.n_sources))
+        found[:, self.kernel.table.active] = amounts
+        return found
+
+    def overlay_at(self, basis: FloatArray) -> FloatArray:
+        """Return e by source, each row at a point of its own, shape (n_rows, n_sources)."""
+        return self.by_source(self.kernel.at_points(self.residuals.overlay, basis))
+
+    def edges(self) -> FloatArray:
+        """Return E by source, shape (n_rows, n_sources)."""
+        return self.by_source(self.kernel.by_source(self.residuals.edges))
+
+
+def judged_entries(result: Result) -> tuple[Entry, ...]:
+    """Return the entries that something is judged by, those along x first."""
+    return tuple(e for axis in AXES for e in result.entries if e.axis == axis and e.margin is not None)
+
+
+def axis_rows(engine: Engine, entries: Sequence[Entry]) -> list[AxisRows]:
+    """Return entries by axis, in their order."""
+    return [_axis_rows(engine, tuple(e for e in entries if e.axis == axis), axis) for axis in AXES]
+
+
+def _axis_rows(engine: Engine, entries: tuple[Entry, ...], axis: Axis) -> AxisRows:
+    rows = tuple(Row(e.pair, *e.layers, e.axis) for e in entries)
+    kernel = engine.view(axis).kernel
+    res = residuals(engine.flow, engine.placement, rows, axis)
+    return AxisRows(entries, res, kernel, len(engine.placement.sources))
+
+
+@dataclass(frozen=True, slots=True)
+class PairForms:
+    """The judged rows at their worst points.
+
+    Attributes
+    ----------
+    overlay, edges : ndarray, shape (n_rows, n_sources)
+        e and E by source, at the quoted sizes [nm].
+    offset, room : ndarray, shape (n_rows,)
+        The known part of e, and the room [nm].
+    along_x : int
+        How many of the rows, the first ones, lie along x.
+    """
+
+    overlay: FloatArray
+    edges: FloatArray
+    offset: FloatArray
+    room: FloatArray
+    along_x: int
+
+    @property
+    def axes(self) -> tuple[slice, slice]:
+        """The rows of each axis, which have few sources in common."""
+        return slice(0, self.along_x), slice(self.along_x, len(self.room))
+
+
+def pair_forms(result: Result, entries: Sequence[Entry], *, bounds_vary: bool) -> PairForms:
+    """Return the judged rows, each at the worst point that its margin was taken at.
+
+    Parameters
+    ----------
+    result : Result
+        The analysis.
+    entries : sequence of Entry
+        As `judged_entries` returns them.
+    bounds_vary : bool
+        Whether bounds are drawn; else the room is less by their sum.
+    """
+    parts = []
+    for rows in axis_rows(result.engine, entries):
+        basis = basis_at(np.array([_place(e) for e in rows.entries]).reshape(-1, 4))
+        overlay, edges = rows.overlay_at(basis), rows.edges()
+        is_offset, is_bound = (np.zeros(rows.n_sources) for _ in range(2))
+        is_offset[rows.kernel.table.active] = rows.kernel.offset[rows.kernel.table.starts]
+        is_bound[rows.kernel.table.active] = rows.kernel.bound[rows.kernel.table.starts]
+        bound = np.abs(overlay + edges) @ is_bound * (not bounds_vary)
+        res = rows.residuals
+        room = res.drawn + edges @ is_offset - res.keep - bound
+        offset = overlay @ is_offset
+        for i in range(len(room)):  # what is exactly nothing must not fail by its rounding
+            terms = float(res.drawn[i]), float(res.keep[i]), float(bound[i])
+            room[i] = abs(offset[i]) + settle(float(room[i] - abs(offset[i])), *terms)
+        parts.append((overlay, edges, offset, room))
+    overlay, edges, offset, room = (np.concatenate(part) for part in zip(*parts, strict=True))
+    return PairForms(overlay, edges, offset, room, len(parts[0][0]))
+
+
+def _place(entry: Entry) -> tuple[float, float, float, float]:
+    point = entry.point
+    return _ORIGIN if point is None else (point.X, point.Y, point.x, point.y)
+
+
+@dataclass(frozen=True, slots=True)
+class FieldForms:
+    """The judged rows as functions of position.
+
+    Attributes
+    ----------
+    overlay : ndarray, shape (n_basis, n_rows, n_sources)
+        e by basis function of position and source, at the quoted sizes [nm, or nm per mm].
+    edges : ndarray, shape (n_rows, n_sources)
+        E by source [nm].
+    offset : ndarray, shape (n_basis, n_rows)
+        The known part of e by basis function [nm, or nm per mm].
+    room : ndarray, shape (n_rows,)
+        The room without bounds [nm].
+    bound : callable
+        Takes basis functions, shape (n_basis, n_points), and returns the bounds' sum at each row and
+        point, shape (n_rows, n_points) [nm].
+    """
+
+    overlay: FloatArray
+    edges: FloatArray
+    offset: FloatArray
+    room: FloatArray
+    bound: Callable[[FloatArray], FloatArray]
+
+
+def field_forms(engine: Engine, entries: Sequence[Entry], *, bounds_vary: bool) -> FieldForms:
+    """Return the judged rows as functions of position; arguments as for `pair_forms`."""
+    parts = axis_rows(engine, entries)
+    overlay = np.concatenate(
+        [np.stack([_one_basis(rows, b) for b in range(N_BASIS)]) for rows in parts], axis=1
+    )
+    offset = np.concatenate([r.kernel.offset_form(r.residuals.overlay) for r in parts]).T
+    room = [r.residuals.drawn - r.residuals.keep + r.residuals.edges @ r.kernel.offset for r in parts]
+
+    def bound(basis: FloatArray) -> FloatArray:
+        if bounds_vary:
+            return np.zeros((len(entries), basis.shape[1]))
+        return np.concatenate(
+            [
+                r.kernel.absolute_sum(r.residuals.overlay + r.residuals.edges, r.kernel.bound, basis)
+                for r in parts
+            ]
+        )
+
+    return FieldForms(
+        overlay, np.concatenate([r.edges() for r in parts]), offset, np.concatenate(room), bound
+    )
+
+
+def _one_basis(rows: AxisRows, index: int) -> FloatArray:
+    chosen = np.zeros((N_BASIS, len(rows.entries)))
+    chosen[index] = 1.0
+    return rows.overlay_at(chosen)
