@@ -7,11 +7,12 @@ from flowplan.cli.streams import emit, emit_json, folded, width
 from flowplan.cli.tables import Column, show_note, show_table
 from flowplan.engine.analysis import Engine
 from flowplan.engine.explain import Direct, Explanation, Hop, direct, explain
+from flowplan.engine.markoutlook import Growth
 from flowplan.engine.results import Entry, Parts, Verdict
 from flowplan.engine.sources import Source
 from flowplan.model.base import Axis
 from flowplan.model.flow import Flow
-from flowplan.report.textchain import explanation_record
+from flowplan.report.textchain import explanation_record, mark_sites
 from flowplan.report.textfigures import Figures, percent
 
 _SHOWN = 3
@@ -38,7 +39,7 @@ def chain(asked: Question, *, as_json: bool) -> None:
         (explain(engine, first, second, axis), direct(engine, first, second, axis)) for axis in asked.axes
     ]
     if as_json:
-        records = [explanation_record(e, d, flow.unit) for e, d in found]
+        records = [explanation_record(e, d, flow) for e, d in found]
         emit_json(
             {
                 "flow": flow.flow,
@@ -69,6 +70,7 @@ class _Page:
     def show(self) -> None:
         self._show_head()
         self._show_hops()
+        self._show_mark_sites()
         self._show_shared()
         self._show_sources()
         self._show_sum()
@@ -97,6 +99,23 @@ class _Page:
                 step = ""
             emit(f"  {step:<{left}}  {error:>{right}}")
             show_note(f"      {self._largest(hop)}")
+
+    def _show_mark_sites(self) -> None:
+        for found, hops in mark_sites(self.explanation, self.flow):
+            read = ", ".join(f"{hop.child} reads {hop.reference}" for hop in hops)
+            self._section(f"Alignment from mark sites: {read}")
+            show_note(f"  {found.sites}; ± random of this reading alone, in its worst direction")
+            rows = [(f"{found.sites.count}, as planned", *self._grown(found.planned))]
+            rows += [(str(count), *self._grown(growth)) for count, growth in found.tried]
+            _, middle, edge = (f"{d:.4g} mm" for d in found.planned.distances)
+            stops = ("centre", middle, f"{'edge' if found.sites.over == 'wafer' else 'corner'} {edge}")
+            columns = (Column("marks"), *(Column(stop, "right") for stop in stops))
+            show_table(columns, rows, indent=2)
+            show_note(f"  other numbers of marks stand on a ring of radius {found.radius:.4g} mm")
+
+    def _grown(self, growth: Growth) -> tuple[str, ...]:
+        sigma = growth.sigma[self.entry.axis]
+        return tuple(self.figures.text(self.flow.confidence * s) for s in sigma.tolist())
 
     def _show_shared(self) -> None:
         rows: list[tuple[str, ...]] = []

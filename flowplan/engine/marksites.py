@@ -11,8 +11,9 @@ no variance left out), so that column k of L is one independent scalar that move
 after it. Positions are taken from the marks' centroid: the shift there is independent of all the rest.
 """
 
+from collections import Counter
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -23,8 +24,6 @@ from flowplan.model.terms import SHAPE_ACTION
 
 #: Entries of a factor this small against its largest are rounding.
 _DUST = 1e-12
-#: Directions in which the worst error at a radius is looked for.
-_DIRECTIONS = 360
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,7 +33,9 @@ class Scalar:
     Attributes
     ----------
     leads : Parameter
-        The parameter after which it is called: the first that it moves.
+        The first parameter that it moves.
+    name : str
+        After that parameter, and after the readings where those along each axis move it apart.
     readings : {'x', 'y'}
         Along which axis the marks were read whose `per_mark` it scales with; x where both are equal.
     size : float
@@ -44,6 +45,7 @@ class Scalar:
     """
 
     leads: Parameter
+    name: str
     readings: Axis
     size: float
     amounts: dict[Axis, FloatArray]
@@ -95,8 +97,12 @@ def scalars(sites: MarkSites, file_unit: str, *, alike: bool) -> tuple[Scalar, .
         for lead, column in _factor(part @ part.T):
             moved = column / in_mm
             amounts = {axis: _affine(sites.parameters, moved, axis, centroid) for axis in AXES}
-            found.append(Scalar(sites.parameters[lead], readings, float(moved[lead]), amounts))
-    return tuple(found)
+            leads = sites.parameters[lead]
+            found.append(Scalar(leads, leads.name, readings, float(moved[lead]), amounts))
+    times = Counter(scalar.name for scalar in found)
+    return tuple(
+        replace(s, name=f"{s.name} from {s.readings} readings") if times[s.name] > 1 else s for s in found
+    )
 
 
 def _factor(form: FloatArray) -> Iterator[tuple[int, FloatArray]]:
@@ -132,22 +138,6 @@ def _affine(
 def mirrored(amounts: FloatArray, axis: Axis) -> FloatArray:
     """Return amounts of (1, x, y) of an exposure on the back seen from the front (SEMI M20)."""
     return amounts * ((-1.0, 1.0, -1.0) if axis == "x" else (1.0, -1.0, 1.0))
-
-
-@dataclass(frozen=True, slots=True)
-class Growth:
-    """How an alignment's error grows away from the centre.
-
-    Attributes
-    ----------
-    radii : ndarray, shape (n,)
-        Distances from the centre of the wafer or field [mm].
-    sigma : dict of axis to ndarray, shape (n,)
-        One standard deviation in the worst direction at each distance [nm].
-    """
-
-    radii: FloatArray
-    sigma: dict[Axis, FloatArray]
 
 
 def deviations(sites: MarkSites, file_unit: str, sigma: float, places: FloatArray) -> dict[Axis, FloatArray]:
@@ -187,38 +177,3 @@ def read_variance(sites: MarkSites, file_unit: str, sigma: float) -> dict[Axis, 
         )
         for axis in AXES
     }
-
-
-def growth(
-    sites: MarkSites, file_unit: str, sigma: float, reach: tuple[float, float], fractions: Sequence[float]
-) -> Growth:
-    """Return how the error grows from the centre to the edge.
-
-    Parameters
-    ----------
-    sites : MarkSites
-        The alignment.
-    file_unit : str
-        Unit of bare lengths.
-    sigma : float
-        Standard deviations at which random sizes are quoted.
-    reach : (float, float)
-        Half the size of what is exposed along x and along y [mm]: the usable radius twice for a wafer.
-    fractions : sequence of float
-        Of the way from the centre to the edge of a wafer, or to the corners of a field.
-
-    Returns
-    -------
-    Growth
-        The worst of the four corners in a field, of all directions on a wafer.
-    """
-    if sites.over == "field":
-        ways = np.array([(u * reach[0], v * reach[1]) for u in (-1, 1) for v in (-1, 1)])
-    else:
-        turns = 2 * np.pi * np.arange(_DIRECTIONS) / _DIRECTIONS
-        ways = np.stack([np.cos(turns), np.sin(turns)], axis=1) * reach
-    share = np.asarray(fractions, dtype=np.float64)
-    places = (share[:, None, None] * ways).reshape(-1, 2)
-    found = deviations(sites, file_unit, sigma, places)
-    worst = {axis: value.reshape(len(share), -1).max(axis=1) for axis, value in found.items()}
-    return Growth(share * float(np.hypot(*ways[0])), worst)

@@ -219,12 +219,12 @@ class Walk:
             as_random = deviation(kind, self.flow.sigma) / deviation("random", self.flow.sigma)
             for scalar in scalars(sites, unit, alike=read["x"] == read["y"]):
                 value, leads = as_random * read[scalar.readings], scalar.leads
-                name = label if leads.shape == "shift" else f"{label}: {leads.name}"
+                name = label if leads.shape == "shift" else f"{label}: {scalar.name}"
                 source = Source(name, mask.id, "random", leads.shape, abs(scalar.size) * value, varies)
                 moves = scalar.amounts[axis] if mask.side == "front" else mirrored(scalar.amounts[axis], axis)
                 if not value or not moves.any():
                     continue
-                key = (mask.id, label, kind, leads.name, scalar.readings, serves)
+                key = (mask.id, label, kind, scalar.name, serves)
                 index = self.book.source(key, source, ((*place, PER_MARK), kind, scalar.readings))
                 for basis in np.flatnonzero(moves):
                     mode = self.book.mode(axis, index, basis_over(int(basis), sites.over))

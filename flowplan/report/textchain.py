@@ -3,15 +3,20 @@
 from typing import Any
 
 from flowplan.engine.explain import Change, Direct, Explanation, Hop, Shared
+from flowplan.engine.markoutlook import Growth, Outlook, outlook, sites_read
 from flowplan.engine.results import Entry, Parts
+from flowplan.model.base import Axis
+from flowplan.model.flow import Flow
+from flowplan.model.marksites import MarkSites
 from flowplan.report.records import entry_record, finite, in_unit, point_record, source_record
+from flowplan.units import significant
 
 Record = dict[str, Any]
 
 
-def explanation_record(explanation: Explanation, direct: Direct, unit: str) -> Record:
+def explanation_record(explanation: Explanation, direct: Direct, flow: Flow) -> Record:
     """Return one axis of ``flowplan chain --format json``."""
-    entry = explanation.entry
+    entry, unit = explanation.entry, flow.unit
     return {
         "axis": entry.axis,
         "chain": list(entry.chain.layers),
@@ -24,7 +29,38 @@ def explanation_record(explanation: Explanation, direct: Direct, unit: str) -> R
         "hops": [_hop(hop, unit) for hop in explanation.hops],
         "shared": [_shared(row, unit) for row in explanation.shared],
         "sources": [source_record(row, unit) for row in entry.sources],
+        "mark_sites": [outlook_record(*item, entry.axis, flow) for item in mark_sites(explanation, flow)],
         "direct": _direct(direct, unit),
+    }
+
+
+def mark_sites(explanation: Explanation, flow: Flow) -> list[tuple[Outlook, list[Hop]]]:
+    """Return the alignments from mark sites on a chain, each with the hops that are read so."""
+    found: dict[MarkSites, list[Hop]] = {}
+    for hop in explanation.hops:
+        sites = sites_read(flow, hop.child, hop.reference, explanation.entry.axis)
+        if sites is not None:
+            found.setdefault(sites, []).append(hop)
+    return [(outlook(flow, sites), hops) for sites, hops in found.items()]
+
+
+def outlook_record(found: Outlook, hops: list[Hop], axis: Axis, flow: Flow) -> Record:
+    """Return an alignment from mark sites as a record: its random error at the flow's confidence."""
+
+    def errors(growth: Growth) -> list[float | None]:
+        return [in_unit(flow.confidence * s, flow.unit) for s in growth.sigma[axis].tolist()]
+
+    return {
+        "reads": [{"child": hop.child, "reference": hop.reference} for hop in hops],
+        "model": found.sites.model,
+        "over": found.sites.over,
+        "marks": found.sites.count,
+        "distances": [significant(d) for d in found.planned.distances.tolist()],
+        "random": errors(found.planned),
+        "ring": {
+            "radius": significant(found.radius),
+            "tried": [{"marks": count, "random": errors(growth)} for count, growth in found.tried],
+        },
     }
 
 
