@@ -14,6 +14,7 @@ from flowplan.report.viewbudget import BudgetBook
 from flowplan.report.viewhops import HopBook
 from flowplan.report.viewmap import LEVELS, MapFrame, map_frame, maps_of
 from flowplan.report.viewmargins import MarginsView, margins_view
+from flowplan.report.viewmarks import MarksView, marks_view
 from flowplan.report.viewmasks import FeatureView, MaskRow, features_view, masks_view
 from flowplan.report.viewmatrix import MatrixView, matrix_view
 from flowplan.report.viewnotes import NotesView, notes_view
@@ -63,6 +64,7 @@ class ReportView:
     tools: tuple[ToolView, ...]
     mask_terms: tuple[MaskTerm, ...]
     features: tuple[FeatureView, ...]
+    mark_sites: tuple[MarksView, ...]
     notes: NotesView
     extras: Extras
 
@@ -95,6 +97,7 @@ def report_view(result: Result, progress: Progress | None = None, extras: Extras
         tools=tools_view(base),
         mask_terms=mask_terms_view(base),
         features=features_view(base),
+        mark_sites=marks_view(base),
         notes=notes_view(base),
         extras=extras or Extras(),
     )
