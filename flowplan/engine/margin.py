@@ -19,7 +19,7 @@ from flowplan.model.flow import BASES, Basis, Flow
 #: first counts, so that symmetric layouts always report the same corner.
 _TIE = 1e-9
 #: A margin this small against its own terms is 0; the rest is rounding.
-_DUST = 1e-12
+DUST = 1e-12
 
 
 def needs(bound: FloatArray, random: FloatArray, linear: FloatArray) -> dict[Basis, FloatArray]:
@@ -292,7 +292,7 @@ def _judge(flow: Flow, res: Residuals, figures: Figures, need: ByBasis, i: int) 
 
 def settle(value: float, *terms: float) -> float:
     """Return 0 where a difference is nothing but the rounding of its terms, else the value."""
-    return 0.0 if abs(value) <= _DUST * sum(abs(t) for t in terms) else value
+    return 0.0 if abs(value) <= DUST * sum(abs(t) for t in terms) else value
 
 
 def verdict_of(margin: float, drawn: float, reserve: float) -> Verdict:

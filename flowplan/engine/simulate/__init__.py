@@ -14,13 +14,14 @@ from flowplan.engine.simulate.forms import field_forms, judged_entries, pair_for
 from flowplan.engine.simulate.intervals import wilson
 from flowplan.engine.simulate.pairs import PairModel, simulate_pairs
 from flowplan.engine.simulate.rare import rare_pairs, rare_union
-from flowplan.engine.simulate.results import Bounds, PairOutcome, Rare, Simulation
+from flowplan.engine.simulate.results import Bounds, FieldYield, PairOutcome, Rare, Simulation
 from flowplan.engine.simulate.tally import Histogram, PairTally
+from flowplan.engine.simulate.threads import plain_products
 from flowplan.errors import Diagnostic, UsageError
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import field_size, whole_fields
 
-__all__ = ["Bounds", "Options", "PairOutcome", "Rare", "Simulation", "simulate"]
+__all__ = ["Bounds", "FieldYield", "Options", "PairOutcome", "Rare", "Simulation", "simulate"]
 
 #: Called with (done, all, what is being done).
 Progress = Callable[[int, int, str], None]
@@ -71,41 +72,72 @@ def simulate(result: Result, options: Options | None = None, progress: Progress 
         FP602, where the flow judges no pair.
     """
     options = options or Options()
-    threads = options.threads or os.cpu_count() or 1
     entries = judged_entries(result)
     if not entries:
         hint = "add `pairs:` with a drawn size or a limit"
         raise UsageError([Diagnostic("FP602", "no pair is judged: there is nothing to simulate", hint)])
-    bounds_vary = options.bounds == "uniform"
-    flow, sources = result.flow, result.engine.placement.sources
+    with plain_products():
+        return _Run(result, entries, options, progress).simulation()
 
-    def step(what: str) -> Callable[[int, int], None] | None:
+
+class _Run:
+    """One simulation, step by step."""
+
+    def __init__(
+        self, result: Result, entries: tuple[Entry, ...], options: Options, progress: Progress | None
+    ) -> None:
+        self._result, self._entries, self._options, self._progress = result, entries, options, progress
+        self._threads = options.threads or os.cpu_count() or 1
+        self._bounds_vary = options.bounds == "uniform"
+
+    def simulation(self) -> Simulation:
+        """Return everything that was found."""
+        flow, asked = self._result.flow, self._options
+        forms = pair_forms(self._result, self._entries, bounds_vary=self._bounds_vary)
+        sources = self._result.engine.placement.sources
+        model = PairModel.of(forms, sources, flow.sigma, bounds_vary=self._bounds_vary)
+        tally = simulate_pairs(model, asked.samples, asked.seed, self._threads, self._step("pairs"))
+        rare = rare_pairs(model, asked.seed, self._threads, self._step("rare failures"))
+        outcomes = self._outcomes(model, tally, rare)
+        return Simulation(
+            flow=flow,
+            samples=asked.samples,
+            seed=asked.seed,
+            bounds=asked.bounds,
+            pairs=outcomes,
+            joint_yield=tally.good / asked.samples,
+            joint_yield_interval=wilson(tally.good, asked.samples),
+            product_yield=math.prod(1 - outcome.fail for outcome in outcomes),
+            rare=rare_union(model, rare, asked.seed, self._threads),
+            fields=self._fields(),
+        )
+
+    def _step(self, what: str) -> Callable[[int, int], None] | None:
+        progress = self._progress
         return (lambda done, total: progress(done, total, what)) if progress else None
 
-    forms = pair_forms(result, entries, bounds_vary=bounds_vary)
-    model = PairModel.of(forms, sources, flow.sigma, bounds_vary=bounds_vary)
-    tally = simulate_pairs(model, options.samples, options.seed, threads, step("pairs"))
-    rare = rare_pairs(model, options.seed, threads, step("rare failures"))
-    fields = FieldModel(
-        field_forms(result.engine, entries, bounds_vary=bounds_vary),
-        layout_of(flow),
-        sources,
-        flow.sigma,
-        bounds_vary=bounds_vary,
-    )
-    outcomes = _outcomes(result, entries, model, tally, rare, options.samples)
-    return Simulation(
-        flow=flow,
-        samples=options.samples,
-        seed=options.seed,
-        bounds=options.bounds,
-        pairs=outcomes,
-        joint_yield=tally.good / options.samples,
-        joint_yield_interval=wilson(tally.good, options.samples),
-        product_yield=math.prod(1 - outcome.fail for outcome in outcomes),
-        rare=rare_union(model, rare, options.seed, threads),
-        fields=simulate_fields(fields, options.samples, options.seed, threads, step("wafers")),
-    )
+    def _fields(self) -> FieldYield:
+        result, asked = self._result, self._options
+        model = FieldModel(
+            field_forms(result.engine, self._entries, bounds_vary=self._bounds_vary),
+            layout_of(result.flow),
+            result.engine.placement.sources,
+            result.flow.sigma,
+            bounds_vary=self._bounds_vary,
+        )
+        return simulate_fields(model, asked.samples, asked.seed, self._threads, self._step("wafers"))
+
+    def _outcomes(self, model: PairModel, tally: PairTally, rare: list[Rare]) -> tuple[PairOutcome, ...]:
+        """Return the rows in file order; the histograms show the residual, what must be kept included."""
+        ranges, samples = model.ranges(), self._options.samples
+        found = {}
+        for i, entry in enumerate(self._entries):
+            fails = int(tally.fails[i])
+            low = float(ranges.low[i]) + entry.keep
+            histogram = Histogram(low, float(ranges.width[i]), tally.counts[i])
+            interval = wilson(fails, samples)
+            found[id(entry)] = PairOutcome(entry, fails, fails / samples, interval, rare[i], histogram)
+        return tuple(found[id(entry)] for entry in self._result.entries if id(entry) in found)
 
 
 def layout_of(flow: Flow) -> Layout:
@@ -114,23 +146,3 @@ def layout_of(flow: Flow) -> Layout:
     centres = whole_fields(flow) or ((0.0, 0.0),)
     half = (width / 2, height / 2) if flow.shapes else (0.0, 0.0)
     return Layout(np.array(centres, dtype=np.float64), half)
-
-
-def _outcomes(
-    result: Result,
-    entries: tuple[Entry, ...],
-    model: PairModel,
-    tally: PairTally,
-    rare: list[Rare],
-    samples: int,
-) -> tuple[PairOutcome, ...]:
-    """Return the rows in file order; the histograms show the residual, what must be kept included."""
-    ranges = model.ranges()
-    found = {}
-    for i, entry in enumerate(entries):
-        fails = int(tally.fails[i])
-        low = float(ranges.low[i]) + entry.keep
-        histogram = Histogram(low, float(ranges.width[i]), tally.counts[i])
-        interval = wilson(fails, samples)
-        found[id(entry)] = PairOutcome(entry, fails, fails / samples, interval, rare[i], histogram)
-    return tuple(found[id(entry)] for entry in result.entries if id(entry) in found)

@@ -6,6 +6,7 @@ fields of one wafer share what they share in the fab.
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -23,7 +24,7 @@ LOTS, WAFERS = 2, 2
 _PER_SET = LOTS * WAFERS
 _FEWEST_SETS = 24
 #: Fields beyond this many add nothing that is shown.
-MOST_FIELDS = 40_000
+MOST_FIELDS = 20_000
 #: Corners of a field, as fractions of half its size.
 _CORNERS = ((-1.0, -1.0), (1.0, -1.0), (-1.0, 1.0), (1.0, 1.0))
 
@@ -84,7 +85,8 @@ class FieldModel:
         self._field = _Part.of(draws.only(["field"]), self._n_rows)
         self._above = _Part.of(draws.only(["mask", "lot", "wafer"]), self._n_rows)
         self._basis = sorted(
-            {b for part in (self._field, self._above) for b, _ in part.overlay}
+            {0}
+            | {b for part in (self._field, self._above) for b, _ in part.overlay}
             | set(np.flatnonzero(forms.offset.any(axis=1)).tolist())
         )
         self._room = self._rooms()
@@ -150,17 +152,13 @@ class FieldModel:
     ) -> np.ndarray:
         """Return which fields hold, shape (n,)."""
         own = {b: product.of(drawn) for b, product in self._field.overlay}
-        by_basis = [np.zeros((self._n_rows, len(wafer))) for _ in range(N_BASIS)]
-        for b in self._basis:
-            by_basis[b] += self._forms.offset[b][:, None]
+        by_basis = {b: self._forms.offset[b][:, None] + np.zeros(len(wafer)) for b in self._basis}
+        for b, values in by_basis.items():
             if b in own:
-                by_basis[b] += own[b]
+                values += own[b]
             if b in above:
-                by_basis[b] += above[b][:, wafer]
-        constant, x, y, wafer_x, wafer_y = by_basis
-        centre = self.layout.centres[place].T
-        constant += wafer_x * centre[0] + wafer_y * centre[1]
-        slope_x, slope_y = (x + wafer_x) * self.layout.half[0], (y + wafer_y) * self.layout.half[1]
+                values += above[b][:, wafer]
+        constant, slope_x, slope_y = self._about_centre(by_basis, self.layout.centres[place].T)
         edges = self._field.edges.of(drawn) + edges_above[:, wafer]
         if len(self._room) == 1:
             worst = np.abs(constant) + np.abs(slope_x) + np.abs(slope_y)
@@ -170,6 +168,15 @@ class FieldModel:
             worst = np.abs(constant + u * slope_x + v * slope_y)
             good &= (room[:, place] + edges >= worst).all(axis=0)
         return good
+
+    def _about_centre(self, by_basis: dict[int, FloatArray], centre: FloatArray) -> tuple[Any, Any, Any]:
+        """Return e at the field's centre and its rise from there to the right and the upper rim [nm]."""
+        constant, x, y, wafer_x, wafer_y = (by_basis.get(b, 0.0) for b in range(N_BASIS))
+        return (
+            constant + wafer_x * centre[0] + wafer_y * centre[1],
+            (x + wafer_x) * self.layout.half[0],
+            (y + wafer_y) * self.layout.half[1],
+        )
 
 
 class _Tally:

@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.analysis import Engine, Result
-from flowplan.engine.margin import settle
+from flowplan.engine.margin import DUST, settle
 from flowplan.engine.parts import Kernel
 from flowplan.engine.points import basis_at
 from flowplan.engine.residual import Residuals, Row, residuals
@@ -161,7 +161,7 @@ def field_forms(engine: Engine, entries: Sequence[Entry], *, bounds_vary: bool) 
         [np.stack([_one_basis(rows, b) for b in range(N_BASIS)]) for rows in parts], axis=1
     )
     offset = np.concatenate([r.kernel.offset_form(r.residuals.overlay) for r in parts]).T
-    room = [r.residuals.drawn - r.residuals.keep + r.residuals.edges @ r.kernel.offset for r in parts]
+    room = [_field_room(r) for r in parts]
 
     def bound(basis: FloatArray) -> FloatArray:
         if bounds_vary:
@@ -176,6 +176,13 @@ def field_forms(engine: Engine, entries: Sequence[Entry], *, bounds_vary: bool) 
     return FieldForms(
         overlay, np.concatenate([r.edges() for r in parts]), offset, np.concatenate(room), bound
     )
+
+
+def _field_room(rows: AxisRows) -> FloatArray:
+    """Return the room without bounds; what is exactly nothing must not fail by its rounding."""
+    res = rows.residuals
+    dust = DUST * (np.abs(res.drawn) + np.abs(res.keep))
+    return np.asarray(res.drawn - res.keep + res.edges @ rows.kernel.offset + dust)
 
 
 def _one_basis(rows: AxisRows, index: int) -> FloatArray:

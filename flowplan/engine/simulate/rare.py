@@ -23,7 +23,7 @@ from flowplan.engine.sources import FloatArray
 
 _OF_PAIRS, _OF_UNION = 2, 3
 #: Samples of one row's estimate and of the union's.
-ROW_SAMPLES, UNION_SAMPLES = 10_000, 20 * BLOCK
+ROW_SAMPLES, UNION_SAMPLES = 10_000, 10 * BLOCK
 #: Share of the union's draws without a tilt.
 _PLAIN = 0.05
 #: Sides less likely than this share of the likeliest need no component of their own.
@@ -84,8 +84,7 @@ def rare_pairs(model: PairModel, seed: int, threads: int, progress: Progress | N
 def _rare_row(model: PairModel, sides: _Sides, tilts: Tilts, row: int, random: np.random.Generator) -> Rare:
     """Estimate one row from its normal parts, joined to one of e and one of E, and its uniforms."""
     both = np.array([row, row + model.n_rows])
-    certain = not sides.forms[both].any()
-    if certain:
+    if not sides.forms[both].any():
         return Rare(1.0, 0.0) if (sides.room[both] < 0).any() else Rare(0.0, None)
     chance = tilts.chance[both]
     if not chance.any():
@@ -96,7 +95,7 @@ def _rare_row(model: PairModel, sides: _Sides, tilts: Tilts, row: int, random: n
     overlay, edges = model.draws.forms[row], model.draws.forms[row + model.n_rows]
     flat = np.flatnonzero(sides.forms[both, k:].any(axis=0)) + k
     joined = np.array([[np.hypot.reduce(overlay[:k]), 0.0], [0.0, np.hypot.reduce(edges[:k])]])
-    parts = np.concatenate([joined, np.stack([overlay[flat], edges[flat]])[:, :]], axis=1)
+    parts = np.concatenate([joined, np.stack([overlay[flat], edges[flat]])], axis=1)
     forms = np.stack([-(parts[1] + parts[0]), -(parts[1] - parts[0])])
     mixture = _Mixture(forms, tilts.theta[both], tilts.log_mean[both], sides.room[both], shares, 0.0, 2)
     return _estimate(*mixture.moments(random, ROW_SAMPLES), ROW_SAMPLES)

@@ -35,9 +35,9 @@ class Histogram:
         below = np.concatenate([[0], np.cumsum(self.counts)])
         wanted = share * below[-1]
         i = min(int(np.searchsorted(below, wanted, side="right")) - 1, len(self.counts) - 1)
-        i = i if self.counts[i] else int(np.flatnonzero(self.counts)[-1])
+        i = i if self.counts[i] else int(np.flatnonzero(self.counts)[-1])  # at the upper end
         inside = (wanted - float(below[i])) / float(self.counts[i])
-        return self.low + self.width * (i + inside)
+        return float(self.low + self.width * (i + inside))
 
     @property
     def mean(self) -> float:

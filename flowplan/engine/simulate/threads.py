@@ -1,12 +1,26 @@
 """Blocks of work on several threads, each with a tally of its own."""
 
 import threading
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
+from contextlib import contextmanager
 from typing import TypeVar
 
 Tally = TypeVar("Tally")
 Progress = Callable[[int, int], None]
+
+
+@contextmanager
+def plain_products() -> Iterator[None]:
+    """Let matrix products run on the thread that asks for them.
+
+    The blocks already keep every processor busy; a library that spreads each small product over
+    threads of its own makes them wait for each other.
+    """
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(limits=1, user_api="blas"):
+        yield
 
 
 class _Blocks:
