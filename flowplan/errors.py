@@ -16,7 +16,7 @@ Path = tuple[str | int, ...]
 Severity = Literal["error", "warning"]
 
 #: Every code with a one-line description. 1xx text, 2xx form, 3xx references, 4xx units and geometry,
-#: 5xx output, 6xx what was asked on the command line.
+#: 5xx output, 6xx what was asked on the command line, 7xx measured data.
 CODES: dict[str, str] = {
     "FP101": "the file cannot be read",
     "FP102": "the file is not UTF-8 text",
@@ -58,6 +58,9 @@ CODES: dict[str, str] = {
     "FP603": "a mask both freed and pinned",
     "FP604": "no mask has a choice of references",
     "FP605": "unknown variant on the command line",
+    "FP701": "the measured data cannot be read",
+    "FP702": "the measured data lack a column",
+    "FP703": "a row of the measured data cannot be read",
 }
 
 
