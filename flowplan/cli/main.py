@@ -12,6 +12,7 @@ from flowplan import __version__
 from flowplan.cli.choosing import CHOOSING
 from flowplan.cli.options import AxisName, BasisName, Form, Order, TextOrJson, VerdictName
 from flowplan.cli.session import FlowArgument, StrictOption, VariantOption, guarded
+from flowplan.cli.statistics import STATISTICS
 from flowplan.cli.streams import emit
 
 app = typer.Typer(
@@ -156,7 +157,7 @@ def report(
     work(flow, variant, output, strict=strict)
 
 
-for command, example in CHOOSING:
+for command, example in (*CHOOSING, *STATISTICS):
     app.command(epilog=f"Example: {example}")(command)
 
 

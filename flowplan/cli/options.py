@@ -35,6 +35,13 @@ class CompareForm(StrEnum):
     MARKDOWN = "markdown"
 
 
+class BoundsName(StrEnum):
+    """How a bound counts in a simulation."""
+
+    WORST = "worst"
+    UNIFORM = "uniform"
+
+
 class Order(StrEnum):
     """Order of the margins."""
 
