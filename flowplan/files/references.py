@@ -50,6 +50,8 @@ def _size_data(size: SizeParts | MarkSites) -> Any:
     if isinstance(size, MarkSites):
         return _sites_data(size)
     parts = {kind: _per_axis_data(value) for kind, value in size.parts()}
+    if size.varies is not None:
+        return parts | {"varies": size.varies}
     return parts["random"] if [*parts] == ["random"] else parts
 
 

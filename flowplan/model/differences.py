@@ -103,6 +103,7 @@ def _flat(value: Any, key: str = "") -> Iterator[tuple[str, str]]:
     elif isinstance(value, SizeParts):
         for kind, size in value.parts():
             yield f"{key}.{kind}", str(size)
+        yield f"{key}.varies", value.varies or ""
         if isinstance(value, Term):
             yield from (
                 (f"{key}.{k}", _text(getattr(value, k))) for k in ("enters", "shape", "over", "source")

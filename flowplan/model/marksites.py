@@ -119,11 +119,11 @@ def _form_of_sites(value: object) -> str:
 
 
 def _varying(size: Size) -> Size:
-    for kind, _ in size.parts():
-        if kind not in ("random", "uniform"):
+    for kind, article in (("bound", "a"), ("offset", "an")):
+        if getattr(size, kind) is not None:
             raise refuse(
                 "FP408",
-                f"a {kind} of each mark says nothing about how the marks differ",
+                f"{article} {kind} of each mark says nothing about how the marks differ",
                 "quote random or uniform here; what all marks share is a term that enters `marks`",
                 key=kind,
             )

@@ -65,7 +65,7 @@ def test_the_margin_map_is_the_prediction_variance_of_statsmodels(model):
 @pytest.mark.parametrize("length", [20.0, 100.0])
 @pytest.mark.parametrize("turn", [0.0, 0.7])
 def test_two_marks_at_a_distance_turn_by_root_two_sigma_over_length(length, turn):
-    """By hand: each end moves by sigma across the line, so the angle by sqrt(2) sigma / L, in urad per nm/mm."""
+    """By hand: each end moves by sigma across the line, the angle by sqrt(2) sigma / L; nm/mm are urad."""
     end = (length / 2 * math.cos(turn), length / 2 * math.sin(turn))
     sites = sites_of([end, (-end[0], -end[1])])
     rotation = covariance(sites, "nm", (30.0**2, 30.0**2))[2, 2]
