@@ -89,7 +89,7 @@ class Source:
         try:
             try:
                 return self._collect(number, passes)
-            except pl.exceptions.ComputeError:
+            except (pl.exceptions.ComputeError, pl.exceptions.SchemaError):
                 # A row with more fields than headings: look at every line by itself.
                 if self._patient or self.layout is None:
                     raise

@@ -96,13 +96,14 @@ def groups_of(batch: Batch) -> tuple[tuple[int, Group], ...]:
     levels: list[_Key] = [batch.reading, batch.lot, batch.wafer, batch.positions[:, 0], batch.positions[:, 1]]
     starts = _starts(levels)
     seen = _first_seen([key[starts] for key in levels])
+    del seen[3]  # a field is X and Y together; all of one X need not stand together
     order = np.lexsort(seen[::-1])
     lengths = np.diff(np.append(starts, len(batch)))
     if not np.array_equal(order, np.arange(len(order))):
         batch = batch.take(_expanded(starts[order], lengths[order]))
         lengths, seen = lengths[order], [level[order] for level in seen]
         starts = np.cumsum(lengths) - lengths
-    reading, _, wafer, _, field = seen
+    reading, _, wafer, field = seen
     fields = _starts([field])
     wafers = _starts([wafer[fields]])
     rows_of_fields = starts[fields]
@@ -133,6 +134,8 @@ def group_medians(values: FloatArray, starts: IntArray) -> FloatArray:
     """
     sizes = np.diff(np.append(starts, len(values)))
     found = np.empty((len(starts), values.shape[1]))
+    if len(starts) and (sizes == sizes[0]).all():
+        return np.asarray(np.median(values.reshape(len(starts), -1, values.shape[1]), axis=1))
     for size in np.unique(sizes):
         chosen = np.flatnonzero(sizes == size)
         rows = starts[chosen][:, None] + np.arange(size)

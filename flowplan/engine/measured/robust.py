@@ -5,13 +5,10 @@ is held against 1.4826 times the median of its absolute values (MAD), which is t
 normal errors. A wafer that is off as a whole is no outlier: it is what the variances are for.
 """
 
-from dataclasses import dataclass
-
 import numpy as np
 
-from flowplan.engine.measured.batch import Group, group_medians
-from flowplan.engine.points import basis_at
-from flowplan.engine.sources import BoolArray, FloatArray
+from flowplan.engine.measured.batch import group_medians
+from flowplan.engine.sources import FloatArray, IntArray
 
 #: Robust standard deviations beyond which a row is an outlier. Of normal errors one in 500 million lies
 #: beyond 6; at the 3.5 of common practice ten thousand sound sites would lose five, and 3 sigma flatter.
@@ -24,22 +21,6 @@ _HUBER = 1.345
 _SWEEPS = 25
 #: Wafers with fewer rows than this have no median worth taking off.
 _FEW = 5
-
-
-@dataclass(frozen=True, slots=True)
-class Robust:
-    """What a reading's rows are held against.
-
-    Attributes
-    ----------
-    pattern : ndarray, shape (n_basis, 2)
-        Coefficients of the shared pattern along x and y [nm, nm/mm].
-    sigma : ndarray, shape (2,)
-        Robust standard deviation within a wafer along x and y [nm]; where it is 0 nothing is judged.
-    """
-
-    pattern: FloatArray
-    sigma: FloatArray
 
 
 def robust_pattern(basis: FloatArray, overlay: FloatArray) -> FloatArray:
@@ -78,43 +59,40 @@ def robust_pattern(basis: FloatArray, overlay: FloatArray) -> FloatArray:
     return found
 
 
-def robust_of(group: Group) -> Robust:
-    """Return what the rows of a group are to be held against."""
-    pattern = robust_pattern(basis_at(group.rows.positions), group.rows.overlay)
-    return Robust(pattern, MAD_TO_SIGMA * np.median(np.abs(deviations(group, pattern)), axis=0))
-
-
-def deviations(group: Group, pattern: FloatArray) -> FloatArray:
-    """Return how far each row lies from its wafer's median, the pattern taken off.
+def deviations(rest: FloatArray, wafer_rows: IntArray) -> FloatArray:
+    """Return how far each row lies from its wafer's median.
 
     Parameters
     ----------
-    group : Group
-        Rows of one reading.
-    pattern : ndarray, shape (n_basis, 2)
-        The shared pattern.
+    rest : ndarray, shape (n_rows, 2)
+        Overlay less the shared pattern [nm], wafer by wafer.
+    wafer_rows : ndarray of int, shape (n_wafers,)
+        First row of each wafer.
 
     Returns
     -------
     ndarray, shape (n_rows, 2)
-        [nm]. Where wafers have fewer than five rows on average, from the median of all rows.
+        Absolute values [nm]. Where wafers have fewer than five rows on average, from the median of all.
     """
-    rest = group.rows.overlay - basis_at(group.rows.positions).T @ pattern
-    starts = group.wafer_rows
-    if len(rest) < _FEW * len(starts):
-        return np.asarray(rest - np.median(rest, axis=0))
-    lengths = np.diff(np.append(starts, len(rest)))
-    return np.asarray(rest - np.repeat(group_medians(rest, starts), lengths, axis=0))
+    if len(rest) < _FEW * len(wafer_rows):
+        return np.abs(rest - np.median(rest, axis=0))
+    lengths = np.diff(np.append(wafer_rows, len(rest)))
+    away = rest - np.repeat(group_medians(rest, wafer_rows), lengths, axis=0)
+    return np.asarray(np.abs(away, out=away))
 
 
-def outlying(group: Group, robust: Robust) -> FloatArray:
-    """Return how many robust standard deviations each row lies off, on the worse axis, shape (n_rows,)."""
-    away = np.abs(deviations(group, robust.pattern))
-    judged = robust.sigma > 0
-    ratios = np.where(judged, away / np.where(judged, robust.sigma, 1.0), 0.0)
-    return np.asarray(ratios.max(axis=1))
+def robust_sigma(away: FloatArray) -> FloatArray:
+    """Return the robust standard deviation along x and y [nm], shape (2,), of absolute deviations."""
+    return np.array([MAD_TO_SIGMA * float(np.median(away[:, axis])) for axis in (0, 1)])
 
 
-def kept(ratios: FloatArray, limit: float) -> BoolArray:
-    """Return which rows are no outliers."""
-    return np.asarray(ratios <= limit)
+def ratios(away: FloatArray, sigma: FloatArray) -> FloatArray:
+    """Return how many robust standard deviations each row lies off, on the worse axis, shape (n_rows,).
+
+    Where a standard deviation is 0, more than half of the rows being alike, nothing is judged.
+    """
+    found = np.zeros(len(away))
+    for axis in (0, 1):
+        if sigma[axis] > 0:
+            np.maximum(found, away[:, axis] / sigma[axis], out=found)
+    return found

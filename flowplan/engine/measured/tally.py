@@ -13,7 +13,7 @@ import numpy as np
 
 from flowplan.engine.measured.batch import Batch, Group, groups_of
 from flowplan.engine.measured.cells import Cells
-from flowplan.engine.measured.robust import LIMIT, Robust, kept, outlying, robust_of
+from flowplan.engine.measured.robust import LIMIT, deviations, ratios, robust_pattern, robust_sigma
 from flowplan.engine.points import basis_at
 from flowplan.engine.sources import N_BASIS, FloatArray, IntArray
 
@@ -143,7 +143,7 @@ class Ledger:
     limit: float | None = LIMIT
     tallies: dict[int, Tally] = field(default_factory=dict)
     outliers: list[Outlier] = field(default_factory=list)
-    _robust: dict[int, Robust] = field(default_factory=dict)
+    _sigma: dict[int, FloatArray] = field(default_factory=dict)
 
     def add(self, batch: Batch, tick: Callable[[], None] | None = None) -> None:
         """Add a batch of whole wafers.
@@ -151,38 +151,40 @@ class Ledger:
         What outliers are held against is found in the first batch that has the reading.
         """
         for reading, group in groups_of(batch):
-            robust = self._robust.setdefault(reading, robust_of(group))
-            tally = self.tallies.get(reading)
-            if tally is None:
-                places = group.rows.positions
-                tally = Tally(robust.pattern, Cells.over(places[:, :2], 41), Cells.over(places[:, 2:], 9))
-                self.tallies[reading] = tally
-            basis = basis_at(group.rows.positions)
-            z = np.column_stack([basis.T, group.rows.overlay - basis.T @ robust.pattern])
-            if self.limit is not None:
-                self._leave_out(reading, group, z)
-            tally.add(z, group)
+            self._add_group(reading, group)
             if tick:
                 tick()
 
-    def _leave_out(self, reading: int, group: Group, z: FloatArray) -> None:
+    def _add_group(self, reading: int, group: Group) -> None:
+        places = group.rows.positions
+        basis = basis_at(places)
+        tally = self.tallies.get(reading)
+        if tally is None:
+            pattern = robust_pattern(basis, group.rows.overlay)
+            tally = Tally(pattern, Cells.over(places[:, :2], 41), Cells.over(places[:, 2:], 9))
+            self.tallies[reading] = tally
+        z = np.empty((len(places), N_COLUMNS))
+        z[:, :N_BASIS] = basis.T
+        z[:, N_BASIS:] = group.rows.overlay - basis.T @ tally.pattern
+        if self.limit is not None:
+            self._leave_out(reading, group, z, self.limit)
+        tally.add(z, group)
+
+    def _leave_out(self, reading: int, group: Group, z: FloatArray, limit: float) -> None:
         """Note the outliers of a group and let them not count."""
-        limit = LIMIT if self.limit is None else self.limit
-        ratios = outlying(group, self._robust[reading])
-        away = np.flatnonzero(~kept(ratios, limit))
-        if not len(away):
+        away = deviations(z[:, N_BASIS:], group.wafer_rows)
+        if reading not in self._sigma:
+            self._sigma[reading] = robust_sigma(away)
+        off = ratios(away, self._sigma[reading])
+        far = np.flatnonzero(off > limit)
+        if not len(far):
             return
-        z[away] = 0.0
-        self.tallies[reading].n_outliers += len(away)
-        farthest = away[np.argsort(-ratios[away], kind="stable")[:_MOST_SHOWN]]
+        z[far] = 0.0
+        self.tallies[reading].n_outliers += len(far)
+        farthest = far[np.argsort(-off[far], kind="stable")[:_MOST_SHOWN]]
         rows = group.rows
         self.outliers += [
-            Outlier(
-                reading,
-                int(rows.row[i]),
-                (float(rows.overlay[i, 0]), float(rows.overlay[i, 1])),
-                float(ratios[i]),
-            )
+            Outlier(reading, int(rows.row[i]), tuple(rows.overlay[i].tolist()), float(off[i]))
             for i in farthest
         ]
         self.outliers = sorted(self.outliers, key=lambda o: (-o.ratio, o.row))[:_MOST_SHOWN]
