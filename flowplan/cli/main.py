@@ -12,7 +12,7 @@ from flowplan import __version__
 from flowplan.cli.choosing import CHOOSING
 from flowplan.cli.options import AxisName, BasisName, Form, Order, TextOrJson, VerdictName
 from flowplan.cli.session import FlowArgument, StrictOption, VariantOption, guarded
-from flowplan.cli.statistics import STATISTICS
+from flowplan.cli.statistics import MOST_SAMPLES, STATISTICS
 from flowplan.cli.streams import emit
 
 app = typer.Typer(
@@ -148,13 +148,24 @@ def report(
             "-o", "--output", metavar="FILE", help="Where to; the flow's name with .html, here, if left out."
         ),
     ] = None,
+    samples: Annotated[
+        int | None,
+        typer.Option(
+            "--simulate",
+            metavar="N",
+            min=1,
+            max=MOST_SAMPLES,
+            help="Simulate with N samples, and show yield and good fields too.",
+            show_default=False,
+        ),
+    ] = None,
     strict: StrictOption = False,
     variant: VariantOption = None,
 ) -> None:
     """Write the report, one HTML page that needs nothing else."""
     from flowplan.cli.report import report as work
 
-    work(flow, variant, output, strict=strict)
+    work(flow, variant, output, strict=strict, samples=samples)
 
 
 for command, example in (*CHOOSING, *STATISTICS):

@@ -1,6 +1,8 @@
 """``flowplan report``: the report as one HTML page."""
 
+from dataclasses import replace
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import typer
 
@@ -10,11 +12,26 @@ from flowplan.cli.progress import Bar
 from flowplan.cli.session import STDIN, open_flow
 from flowplan.cli.status import Status
 from flowplan.cli.streams import printable, tell
-from flowplan.engine.analysis import analyse
+from flowplan.engine.analysis import Result, analyse
+
+if TYPE_CHECKING:
+    from flowplan.report.viewsimulation import SimulationView
 
 
-def report(name: str, variant: str | None, output: str | None, *, strict: bool) -> None:
-    """Write the report of a flow and say where, and how the flow stands."""
+def report(
+    name: str, variant: str | None, output: str | None, *, strict: bool, samples: int | None = None
+) -> None:
+    """Write the report of a flow and say where, and how the flow stands.
+
+    Parameters
+    ----------
+    name, variant, output : str
+        The flow file, which of its plans, and where to write.
+    strict : bool
+        End with status 1 if a pair fails.
+    samples : int, optional
+        Simulate the flow with so many samples, and show what comes of it.
+    """
     target = output or default_output(name)
     refuse_output(target, name)
     opened = open_flow(name, variant)
@@ -24,14 +41,28 @@ def report(name: str, variant: str | None, output: str | None, *, strict: bool) 
 
     with Bar("margins") as bar:
         result = analyse(opened.flow, progress=bar.step)
+    extras = report_extras(result, opened.variants)
+    if samples is not None:
+        extras = replace(extras, simulation=_simulated(result, samples))
     with Bar("report") as bar:
-        page = render_report(result, progress=bar.step, extras=report_extras(result, opened.variants))
+        page = render_report(result, progress=bar.step, extras=extras)
     write_output(target, page, flow=name)
     tell(f"wrote {printable(target)}")
     tell(verdict_line(result))
     tell(f"worst: {printable(worst_line(result))}")
     if strict and result.counts["fail"]:
         raise typer.Exit(Status.FAILS)
+
+
+def _simulated(result: Result, samples: int) -> "SimulationView":
+    from flowplan.engine.simulate import Options, simulate
+    from flowplan.report.viewsimulation import simulation_view
+
+    with Bar("simulating") as bar:
+        found = simulate(
+            result, Options(samples), lambda done, total, what: bar.step(done, total, f" {what}")
+        )
+    return simulation_view(found)
 
 
 def default_output(flow: str) -> str:

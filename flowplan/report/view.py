@@ -19,6 +19,7 @@ from flowplan.report.viewmasks import FeatureView, MaskRow, features_view, masks
 from flowplan.report.viewmatrix import MatrixView, matrix_view
 from flowplan.report.viewnotes import NotesView, notes_view
 from flowplan.report.viewpairs import Books, PairView, pairs_view, remarks_of
+from flowplan.report.viewsimulation import SimulationView
 from flowplan.report.viewtools import MaskTerm, ToolView, mask_terms_view, tool_anchors, tools_view
 from flowplan.report.viewtree import TreeView, tree_view
 
@@ -41,11 +42,12 @@ class HeadView:
 
 @dataclass(frozen=True, slots=True)
 class Extras:
-    """What helps to choose among plans; None where there is nothing to show."""
+    """Sections beyond the margins, on choosing and statistics; None where there is nothing to show."""
 
     comparison: ComparisonText | None = None
     remedies: RemediesText | None = None
     ladder: LadderText | None = None
+    simulation: SimulationView | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -10,6 +10,7 @@ from flowplan.engine.parts import CHUNK
 from flowplan.engine.results import Entry
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.base import AXES
+from flowplan.model.flow import Flow
 from flowplan.model.geometry import field_size, usable_radius
 from flowplan.report.charts import Squares, runs, squares
 from flowplan.report.viewbase import Base
@@ -81,17 +82,25 @@ class MapView:
 
 def map_frame(base: Base) -> MapFrame | None:
     """Return what the maps share; None where nothing depends on position."""
-    flow, sites = base.result.flow, base.result.engine.sites
-    if sites.n_points == 1:
-        return None
-    width, height = field_size(flow)
-    radius = usable_radius(flow)
-    widest = len(np.unique(sites.centres[:, 0]))
-    block = math.ceil(widest / _MOST_COLUMNS)
+    sites = base.result.engine.sites
+    return None if sites.n_points == 1 else frame_of(base.result.flow, sites.centres)
+
+
+def frame_of(flow: Flow, centres: FloatArray) -> MapFrame:
+    """Return the frame of a flow's wafer with fields at these centres [mm]."""
+    pitch, radius = field_size(flow), usable_radius(flow)
     if flow.wafer is None or radius is None:
-        return MapFrame.of(0.0, 0.0, (width, height), 1)
+        return MapFrame.of(0.0, 0.0, pitch, 1)
+    block = math.ceil(len(np.unique(centres[:, 0])) / _MOST_COLUMNS)
     full = convert(flow.wafer.diameter.in_base(flow.unit) / 2, "nm", "mm")
-    return MapFrame.of(full, radius, (width, height), block)
+    return MapFrame.of(full, radius, pitch, block)
+
+
+def places_of(centres: FloatArray, frame: MapFrame) -> tuple[list[tuple[int, int]], IntArray]:
+    """Return the grid places of the squares, (column, row downwards), and the square of each field."""
+    grid = np.rint(centres / (frame.width, frame.height)).astype(np.int64)
+    places, block_of = np.unique(grid[:, ::-1], axis=0, return_inverse=True)
+    return [(int(column), -int(row)) for row, column in places], block_of.reshape(-1)
 
 
 def maps_of(base: Base, frame: MapFrame | None) -> dict[int, MapView]:
@@ -119,10 +128,7 @@ class _Painter:
     def __init__(self, base: Base, frame: MapFrame) -> None:
         sites = base.result.engine.sites
         self._base, self._n_fields = base, sites.n_fields
-        pitch = (frame.width, frame.height)
-        grid = np.rint(sites.centres / pitch).astype(np.int64)
-        places, self._block_of = np.unique(grid[:, ::-1], axis=0, return_inverse=True)
-        self._places = [(int(column), -int(row)) for row, column in places]
+        self._places, self._block_of = places_of(sites.centres, frame)
         self._joined = frame.block > 1
 
     def paint(self, margins: FloatArray) -> MapView:
@@ -130,7 +136,7 @@ class _Painter:
         fields = by_field.min(axis=1)
         if self._n_fields > 1 and np.ptp(fields) > _FLAT * float(np.abs(margins).max()):
             blocks = np.full(len(self._places), np.inf)
-            np.minimum.at(blocks, self._block_of.reshape(-1), fields)
+            np.minimum.at(blocks, self._block_of, fields)
             return self._map("wafer", self._places, blocks, "square" if self._joined else "field")
         places = [(column, -row) for row in (-1, 0, 1) for column in (-1, 0, 1)]
         return self._map("field", places, by_field.min(axis=0), "site")
