@@ -204,6 +204,26 @@ class TestLimitedByTheWafersEdge:
         assert found.chain_rss > 2 * found.overlay.random
 
 
+class TestFewDies:
+    """redistribution: the first opening aligned by a fit to twelve dies instead of very many."""
+
+    def test_the_opening_loses_what_twelve_dies_cannot_average(self, results):
+        """By hand on a ring: shift 3.1 um / sqrt(12), rotation the same over 110 mm, times y at the point."""
+        name = "opening on stud"
+        many = entry(results["redistribution"], name, "x")
+        few = entry(
+            flowplan.analyse(flowplan.load(FLOWS / "redistribution.yaml", "twelve dies read")).result,
+            name,
+            "x",
+        )
+        assert (abs(few.point.X + few.point.x), abs(few.point.Y + few.point.y)) == (133, 49)
+        gain = rss(3.1 / sqrt(12), 3.1 / (110 * sqrt(12)) * 49) ** 2 - 0.5**2
+        assert (few.residual.random / 1e3) ** 2 - (many.residual.random / 1e3) ** 2 == pytest.approx(
+            gain, rel=1e-9
+        )
+        assert few.margin.mixed < many.margin.mixed < 0
+
+
 class TestBackSideMirrored:
     """pressure_sensor: the camera offset of the cavity mask; SEMI M20-1104, 6.2: x reverses, y stays."""
 
