@@ -62,7 +62,7 @@ def tilts_of(variance: FloatArray, flat: FloatArray, room: FloatArray) -> Tilts:
     reach = flat.sum(axis=1)
     impossible = (variance == 0) & (reach <= room)
     rare = (room > 0) & ~impossible
-    with np.errstate(divide="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore"):
         scale = np.sqrt(variance + (flat**2).sum(axis=1) / 3)
         # Uniform parts only add to K', so the normal part alone needs the largest tilt; without one,
         # K' is within 1/theta a uniform of its end.

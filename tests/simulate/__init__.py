@@ -1,0 +1,1 @@
+"""The simulation against distributions and packages that share no code with it."""
