@@ -10,9 +10,17 @@ import typer
 
 from flowplan import __version__
 from flowplan.cli.choosing import CHOOSING
-from flowplan.cli.options import AxisName, BasisName, Form, Order, TextOrJson, VerdictName
+from flowplan.cli.options import AxisName, BasisName, Form, Order, SignName, TextOrJson, VerdictName
 from flowplan.cli.session import FlowArgument, StrictOption, VariantOption, guarded
-from flowplan.cli.statistics import MOST_SAMPLES, STATISTICS
+from flowplan.cli.statistics import (
+    BEYOND,
+    MOST_SAMPLES,
+    STATISTICS,
+    BeyondOption,
+    ColumnsOption,
+    KeepOption,
+    SignOption,
+)
 from flowplan.cli.streams import emit
 
 app = typer.Typer(
@@ -159,13 +167,28 @@ def report(
             show_default=False,
         ),
     ] = None,
+    data: Annotated[
+        str | None,
+        typer.Option(
+            "--measured",
+            metavar="DATA",
+            help="Hold measured overlay against the plan, too; see `flowplan measured`.",
+            show_default=False,
+        ),
+    ] = None,
+    columns: ColumnsOption = None,
+    sign: SignOption = SignName.MASK,
+    keep: KeepOption = False,
+    beyond: BeyondOption = BEYOND,
     strict: StrictOption = False,
     variant: VariantOption = None,
 ) -> None:
     """Write the report, one HTML page that needs nothing else."""
+    from flowplan.cli.report import MeasuredData
     from flowplan.cli.report import report as work
 
-    work(flow, variant, output, strict=strict, samples=samples)
+    measured = MeasuredData(data, columns, sign, None if keep else beyond) if data is not None else None
+    work(flow, variant, output, strict=strict, samples=samples, data=measured)
 
 
 for command, example in (*CHOOSING, *STATISTICS):

@@ -71,3 +71,10 @@ class AxisName(StrEnum):
 
     X = "x"
     Y = "y"
+
+
+class SignName(StrEnum):
+    """Which way measured overlay is counted."""
+
+    MASK = "mask-minus-reference"
+    REFERENCE = "reference-minus-mask"

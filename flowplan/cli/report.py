@@ -1,12 +1,13 @@
 """``flowplan report``: the report as one HTML page."""
 
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import typer
 
 from flowplan.cli.check import verdict_line, worst_line
+from flowplan.cli.options import SignName
 from flowplan.cli.output import refuse_output, write_output
 from flowplan.cli.progress import Bar
 from flowplan.cli.session import STDIN, open_flow
@@ -15,11 +16,28 @@ from flowplan.cli.streams import printable, tell
 from flowplan.engine.analysis import Result, analyse
 
 if TYPE_CHECKING:
+    from flowplan.report.viewmeasured import MeasuredView
     from flowplan.report.viewsimulation import SimulationView
 
 
+@dataclass(frozen=True, slots=True)
+class MeasuredData:
+    """Measured overlay that the report shows, and how it is read."""
+
+    file: str
+    columns: str | None
+    sign: SignName
+    limit: float | None
+
+
 def report(
-    name: str, variant: str | None, output: str | None, *, strict: bool, samples: int | None = None
+    name: str,
+    variant: str | None,
+    output: str | None,
+    *,
+    strict: bool,
+    samples: int | None = None,
+    data: MeasuredData | None = None,
 ) -> None:
     """Write the report of a flow and say where, and how the flow stands.
 
@@ -31,6 +49,8 @@ def report(
         End with status 1 if a pair fails.
     samples : int, optional
         Simulate the flow with so many samples, and show what comes of it.
+    data : MeasuredData, optional
+        Measured overlay to hold against the plan.
     """
     target = output or default_output(name)
     refuse_output(target, name)
@@ -44,6 +64,8 @@ def report(
     extras = report_extras(result, opened.variants)
     if samples is not None:
         extras = replace(extras, simulation=_simulated(result, samples))
+    if data is not None:
+        extras = replace(extras, measured=_measured(result, data))
     with Bar("report") as bar:
         page = render_report(result, progress=bar.step, extras=extras)
     write_output(target, page, flow=name)
@@ -63,6 +85,18 @@ def _simulated(result: Result, samples: int) -> "SimulationView":
             result, Options(samples), lambda done, total, what: bar.step(done, total, f" {what}")
         )
     return simulation_view(found)
+
+
+def _measured(result: Result, data: MeasuredData) -> "MeasuredView":
+    from flowplan.cli.measured import ask, warn
+    from flowplan.report.measuring import take_measurements
+    from flowplan.report.viewmeasured import measured_view
+
+    asked = ask(data.columns, data.sign, data.limit)
+    with Bar("measured data") as bar:
+        taken = take_measurements(result.flow, data.file, asked, bar.step)
+    warn(taken)
+    return measured_view(taken)
 
 
 def default_output(flow: str) -> str:

@@ -7,7 +7,9 @@ from collections.abc import Callable
 from flowplan.engine.analysis import Result
 from flowplan.files.resources import resource_folder
 from flowplan.report.comparison import ComparisonText
+from flowplan.report.measuring import Taken
 from flowplan.report.view import Extras, package_version, report_view
+from flowplan.report.viewmeasured import measured_view
 
 Progress = Callable[[int, int], None]
 
@@ -42,6 +44,18 @@ def render_comparison(text: ComparisonText) -> str:
         As `comparison_text` returns it.
     """
     return _render("compare.html.j2", has_script=False, comparison=text, version=package_version())
+
+
+def render_measured(taken: Taken) -> str:
+    """Return measured overlay beside its plan as one HTML page, made like the report.
+
+    Parameters
+    ----------
+    taken : Taken
+        As `take_measurements` returns it.
+    """
+    view = measured_view(taken)
+    return _render("measured.html.j2", has_script=False, measured=view, version=package_version())
 
 
 def _render(template: str, *, has_script: bool = True, **values: object) -> str:

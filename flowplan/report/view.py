@@ -17,6 +17,7 @@ from flowplan.report.viewmargins import MarginsView, margins_view
 from flowplan.report.viewmarks import MarksView, marks_view
 from flowplan.report.viewmasks import FeatureView, MaskRow, features_view, masks_view
 from flowplan.report.viewmatrix import MatrixView, matrix_view
+from flowplan.report.viewmeasured import MeasuredView
 from flowplan.report.viewnotes import NotesView, notes_view
 from flowplan.report.viewpairs import Books, PairView, pairs_view, remarks_of
 from flowplan.report.viewsimulation import SimulationView
@@ -48,6 +49,7 @@ class Extras:
     remedies: RemediesText | None = None
     ladder: LadderText | None = None
     simulation: SimulationView | None = None
+    measured: MeasuredView | None = None
 
 
 @dataclass(frozen=True, slots=True)

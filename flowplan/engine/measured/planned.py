@@ -24,17 +24,26 @@ class Planned:
         Mean over the measured places of the variance of the random parts [nm^2].
     offset_variance : float
         How much the known offsets vary over the measured places [nm^2].
+    drawn_once : float
+        What is in `variance` but moves the mean of all rows instead of spreading them, since it is drawn
+        once for the mask set [nm^2].
     """
 
     offset: float
     bound: float
     variance: float
     offset_variance: float
+    drawn_once: float
 
     @property
     def three_sigma(self) -> float:
         """Three standard deviations over wafers and places [nm]."""
         return SIGMAS * float(np.sqrt(self.variance + self.offset_variance))
+
+    @property
+    def spread(self) -> float:
+        """Variance over wafers and places of one mask set [nm^2]."""
+        return max(self.variance + self.offset_variance - self.drawn_once, 0.0)
 
     @property
     def mean_plus_3sigma(self) -> float:
@@ -67,10 +76,13 @@ def planned(engine: Engine, mask: str, reference: str, axis: Axis, moments: Floa
     form, offset = kernel.gram(row)[0], kernel.offset_form(row)[0]
     mean = moments[0]
     spread = moments - np.outer(mean, mean)
+    once = np.array([placement.sources[i].varies == "mask" for i in kernel.table.source], dtype=np.float64)
+    form_once = kernel.gram(row * once)[0]
     bound = kernel.absolute_sum(row, kernel.bound, engine.sites.basis)
     return Planned(
         offset=float(offset @ mean),
         bound=float(bound.max()),
         variance=float(max(np.sum(form * moments), 0.0)),
         offset_variance=float(max(offset @ spread @ offset, 0.0)),
+        drawn_once=float(mean @ form_once @ mean),
     )

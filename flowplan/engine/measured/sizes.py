@@ -5,10 +5,11 @@ rest of the overlay's variance is the flow's other terms, at the places measured
 
     alignment^2 = measured variance - variance of the other terms
 
-and the mean, less what the flow already knows as an offset, is the alignment's offset, unless it lies
-within two of its standard errors. The plan then says of that reading what was measured. Overlay of layers
-that do not read each other is a sum of several readings, and an average does not tell its readings apart:
-from these nothing is written.
+(without what is drawn once for the mask set, which is in the mean and not in the spread), and the mean,
+less what the flow already knows as an offset, is the alignment's offset, unless it lies within two of its
+standard errors. The plan then says of that reading what was measured. Overlay of layers that do not read
+each other is a sum of several readings, and an average does not tell its readings apart: from these
+nothing is written.
 """
 
 import math
@@ -25,7 +26,7 @@ from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.edits import Readings, with_references
 from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Mask, Reading
-from flowplan.model.terms import Size
+from flowplan.model.terms import Level, Size
 from flowplan.model.tools import Tool
 from flowplan.units import Quantity, convert, significant
 
@@ -48,6 +49,8 @@ class Found:
         At the flow's `sigma`, and signed, in the flow's unit; rounded.
     exceeded : bool
         Whether the flow's other terms alone are larger than what was measured, so that 0 is left.
+    varies : str or None
+        How often the flow says that the alignment is redrawn; this stays.
     """
 
     mask: str
@@ -56,6 +59,7 @@ class Found:
     random: float
     offset: float
     exceeded: bool
+    varies: Level | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -84,6 +88,35 @@ class Sizes:
             for one in both:
                 chosen[mask, one.axis] = (Reading(mask=reference, alignment=size),)
         return chosen
+
+    def origins(self, measured: Measured, data: str) -> dict[str, str]:
+        """Return by mask what its measured alignment comes from, for a comment in the flow file.
+
+        Parameters
+        ----------
+        measured : Measured
+            What the sizes were taken from.
+        data : str
+            What the data are called.
+        """
+        unit = measured.flow.unit
+        notes: dict[str, list[str]] = {}
+        for reading in measured.readings:
+            axes = [
+                one.axis
+                for one in self.found
+                if (one.mask, one.reference) == (reading.mask, reading.reference)
+            ]
+            if axes:
+                tally = reading.tally
+                spread = ", ".join(
+                    f"{axis} {convert(reading.axes[axis].three_sigma, 'nm', unit):.4g}" for axis in axes
+                )
+                notes.setdefault(reading.mask, []).append(
+                    f"alignment to {reading.reference} along {' and '.join(axes)} from {data}, {tally.n} "
+                    f"rows on {tally.n_wafers} wafers of {len(tally.lots)} lots, overlay 3 sigma {spread} {unit}"
+                )
+        return {mask: "; ".join(parts) for mask, parts in notes.items()}
 
 
 def sizes_of(measured: Measured) -> Sizes:
@@ -139,8 +172,10 @@ def _found(engine: Engine, mask: Mask, reading: MeasuredReading, axis: Axis) -> 
     flow, tally, figures = engine.flow, reading.tally, reading.axes[axis]
     moments = tally.rows[:N_BASIS, :N_BASIS] / tally.n
     rest = planned(engine, reading.mask, reading.reference, axis, moments)
-    left = figures.sigma**2 - rest.variance - rest.offset_variance
+    left = figures.sigma**2 - rest.spread
     random = convert(flow.sigma * float(np.sqrt(max(left, 0.0))), "nm", flow.unit)
+    own = mask.aligns_to.on(axis)[0].alignment or flow.tools[mask.tool].alignment
+    varies = own.varies if isinstance(own, Size) else None
     # On the back x is reversed: a shift there acts with the other sign.
     turn = -1 if mask.side == "back" and axis == "x" else 1
     error = figures.mean_error
@@ -149,7 +184,9 @@ def _found(engine: Engine, mask: Mask, reading: MeasuredReading, axis: Axis) -> 
     offset = turn * convert(shift, "nm", flow.unit) if certain else 0.0
     size = max(random, abs(offset), convert(figures.three_sigma, "nm", flow.unit))
     step = 10.0 ** (math.floor(math.log10(size)) + 1 - _DIGITS) if size else 1.0
-    return Found(mask.id, reading.reference, axis, _rounded(random, step), _rounded(offset, step), left < 0)
+    return Found(
+        mask.id, reading.reference, axis, _rounded(random, step), _rounded(offset, step), left < 0, varies
+    )
 
 
 def _rounded(value: float, step: float) -> float:
@@ -164,7 +201,7 @@ def _size(found: list[Found]) -> Size:
     parts: dict[str, PerAxis] = {"random": PerAxis(**random)}
     if any(one.offset for one in found):
         parts["offset"] = PerAxis(**offset)
-    return Size(**parts)
+    return Size(**parts, varies=found[0].varies)
 
 
 def _quantity(known: dict[Axis, Found], axis: Axis, kind: str) -> Quantity:

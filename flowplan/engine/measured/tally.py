@@ -161,7 +161,7 @@ class Ledger:
         tally = self.tallies.get(reading)
         if tally is None:
             pattern = robust_pattern(basis, group.rows.overlay)
-            tally = Tally(pattern, Cells.over(places[:, :2], 41), Cells.over(places[:, 2:], 9))
+            tally = Tally(pattern, Cells.over(places[:, :2], 21), Cells.over(places[:, 2:], 9))
             self.tallies[reading] = tally
         z = np.empty((len(places), N_COLUMNS))
         z[:, :N_BASIS] = basis.T
