@@ -45,6 +45,7 @@ def test_terms_vary_by_what_they_are():
         "writing": "mask",  # the mask's share repeats in every field (SEMI P18)
         "marks": "field",
         "CD": "field",
+        "mark reading of A": "wafer",
     }
     assert found["lens", "random", "tool"] == "lot"
 
