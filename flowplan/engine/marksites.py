@@ -14,6 +14,7 @@ after it. Positions are taken from the marks' centroid: the shift there is indep
 from collections import Counter
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from functools import lru_cache
 
 import numpy as np
 
@@ -73,6 +74,7 @@ def covariance(sites: MarkSites, file_unit: str, variance: tuple[float, float]) 
     return np.asarray(inverse * np.repeat(variance, len(rows) // 2) @ inverse.T)
 
 
+@lru_cache(maxsize=256)  # one alignment serves many readings
 def scalars(sites: MarkSites, file_unit: str, *, alike: bool) -> tuple[Scalar, ...]:
     """Return the independent errors of a fit, at readings of 1 nm.
 
@@ -132,6 +134,7 @@ def _affine(
         amounts[basis] += sign * value
         if basis:
             amounts[0] -= sign * value * centroid[basis - 1]
+    amounts.setflags(write=False)
     return amounts
 
 

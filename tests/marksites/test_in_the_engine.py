@@ -101,6 +101,19 @@ def test_axes_that_read_different_marks_are_two_fits_of_which_one_axis_is_used()
     assert np.abs(both[:n, n:]).max() > 1
 
 
+def test_one_mark_read_in_two_ways_is_two_fits():
+    """x and y read A's marks, each by an alignment of its own."""
+    ways = {
+        axis: {"mask": "A", "alignment": alignment(RING, per_mark=p)} for axis, p in (("x", 30), ("y", 31))
+    }
+    found = placed_covariance(two_references(ways), POINTS, layer="C")
+    n = len(POINTS)
+    assert np.abs(found[:n, n:]).max() == 0
+    assert found[n:, n:] == pytest.approx(
+        (31 / 30) ** 2 * placed_covariance(one_reading(alignment(RING)), POINTS)[n:, n:]
+    )
+
+
 def test_every_reading_is_fresh():
     """Two masks that read the same marks differ by two readings; an average of two halves each."""
     data = bare_flow(
