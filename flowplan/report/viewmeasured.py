@@ -12,6 +12,7 @@ from flowplan.model.geometry import field_size, usable_radius
 from flowplan.report.measured import MeasuredText, measured_text, ratio_text
 from flowplan.report.measuring import Taken
 from flowplan.report.textfigures import Figures
+from flowplan.units import convert, significant
 
 #: Readings with maps, those that exceed the plan most.
 _MOST_MAPS = 8
@@ -22,6 +23,15 @@ _LONGEST = 22.0
 _BOX = 80
 #: A bar that is as long as the larger of measured and planned; the chart's units.
 BAR_WIDTH = 240
+
+
+@dataclass(frozen=True, slots=True)
+class _Frame:
+    """Half the size of a map [mm], whether it is a wafer's, and the drawing's units for 1 nm."""
+
+    reach: tuple[float, float]
+    round: bool
+    stretch: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -146,8 +156,10 @@ def _maps(measured: Measured, reading: MeasuredReading, figures: Figures) -> Rea
         if len(places) < 2:
             continue
         reach = _reach(measured, places, where)
+        longest = max(float(np.hypot(*vectors.T).max()) for vectors in (mean, left))
+        frame = _Frame(reach, where == "wafer", _LONGEST / longest if longest else 0.0)
         for title, vectors in (("mean", mean), ("left by the fit", left)):
-            found.append(_map(f"{title} over the {where}", places, vectors, reach, figures, where == "wafer"))
+            found.append(_map(f"{title} over the {where}", places, vectors, frame, figures))
     return ReadingMaps(reading.name, tuple(found))
 
 
@@ -174,22 +186,19 @@ def _map(
     title: str,
     places: FloatArray,
     vectors: FloatArray,
-    reach: tuple[float, float],
+    frame: _Frame,
     figures: Figures,
-    is_round: bool,
 ) -> VectorMap:
-    size = (_HALF - 4) if is_round else _BOX
-    scale = size / max(*reach, 1e-9)
-    longest = float(np.hypot(*vectors.T).max())
-    stretch = _LONGEST / longest if longest else 0.0
+    scale = ((_HALF - 4) if frame.round else _BOX) / max(*frame.reach, 1e-9)
+    stretch = frame.stretch
     feet = np.round(places * (scale, -scale), 1) + 0.0
     tips = np.round(vectors * (stretch, -stretch), 1) + 0.0
     path = "".join(f"M{_n(x)} {_n(y)}l{_n(u)} {_n(v)}" for (x, y), (u, v) in zip(feet, tips, strict=True))
     dots = "".join(f"M{_n(x)} {_n(y)}h0" for x, y in feet)
-    words = f"longest {figures.with_unit(longest)}"
-    return VectorMap(
-        title, path, dots, round(reach[0] * scale, 1), round(reach[1] * scale, 1), is_round, words
-    )
+    longest = convert(float(np.hypot(*vectors.T).max()), "nm", figures.unit)
+    words = f"longest {significant(longest, 2):g} {figures.unit}"
+    half = [round(reach * scale, 1) for reach in frame.reach]
+    return VectorMap(title, path, dots, half[0], half[1], frame.round, words)
 
 
 def _n(value: float) -> str:

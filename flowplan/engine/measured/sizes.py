@@ -109,12 +109,12 @@ class Sizes:
             ]
             if axes:
                 tally = reading.tally
-                spread = ", ".join(
-                    f"{axis} {convert(reading.axes[axis].three_sigma, 'nm', unit):.4g}" for axis in axes
-                )
+                figures = (convert(reading.axes[axis].three_sigma, "nm", unit) for axis in axes)
+                spread = ", ".join(f"{axis} {v:.4g}" for axis, v in zip(axes, figures, strict=True))
+                wafers = f"{tally.n_wafers} wafers of {len(tally.lots)} lots"
                 notes.setdefault(reading.mask, []).append(
-                    f"alignment to {reading.reference} along {' and '.join(axes)} from {data}, {tally.n} "
-                    f"rows on {tally.n_wafers} wafers of {len(tally.lots)} lots, overlay 3 sigma {spread} {unit}"
+                    f"alignment to {reading.reference} along {' and '.join(axes)} from {data}, "
+                    f"{tally.n} rows on {wafers}, overlay 3 sigma {spread} {unit}"
                 )
         return {mask: "; ".join(parts) for mask, parts in notes.items()}
 
