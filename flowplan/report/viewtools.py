@@ -2,7 +2,8 @@
 
 from dataclasses import dataclass
 
-from flowplan.model.terms import Term
+from flowplan.model.marksites import MarkSites
+from flowplan.model.terms import Size, Term
 from flowplan.report.viewbase import Base, LayerName, percent
 from flowplan.report.viewmasks import size_words
 from flowplan.report.viewpairs import remarks_of
@@ -70,12 +71,23 @@ def mask_terms_view(base: Base) -> tuple[MaskTerm, ...]:
         rows = [_term(base, label, term, on_tool=False) for label, term in mask.terms.items()]
         readings = dict.fromkeys((*mask.aligns_to.x, *mask.aligns_to.y))
         rows += [
-            TermRow(f"alignment to {r.mask}", size_words(base, r.alignment), "reading", "shift", "", ())
+            TermRow(
+                f"alignment to {r.mask}",
+                size_words(base, r.alignment),
+                "reading",
+                _shape(r.alignment),
+                "",
+                (),
+            )
             for r in readings
             if r.alignment is not None
         ]
         found += [MaskTerm(base.names[mask.id], row) for row in rows]
     return tuple(found)
+
+
+def _shape(alignment: Size | MarkSites) -> str:
+    return "shift" if isinstance(alignment, Size) else f"fitted over the {alignment.over}"
 
 
 def _term(base: Base, name: str, term: Term, *, on_tool: bool) -> TermRow:
