@@ -1,13 +1,16 @@
 """What library users and both faces call: load a flow, analyse it, render it."""
 
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any, Literal
 
 from flowplan.engine import analysis
 from flowplan.engine.results import Entry, Verdict
 from flowplan.files.reader import load, load_with_warnings, parse
 from flowplan.model.flow import Flow
 from flowplan.report.records import entry_record, margins_document
+
+if TYPE_CHECKING:
+    from flowplan.engine.simulate import Simulation
 
 __all__ = ["Analysis", "analyse", "load", "load_with_warnings", "parse"]
 
@@ -43,6 +46,34 @@ class Analysis:
     def worst(self) -> Entry | None:
         """The judged entry with the smallest margin."""
         return self.result.worst
+
+    def simulate(
+        self, samples: int = 100_000, seed: int = 1, bounds: Literal["worst", "uniform"] = "worst"
+    ) -> "Simulation":
+        """Draw every error at random, and count what fails.
+
+        Parameters
+        ----------
+        samples : int
+            Draws of every error.
+        seed : int
+            The same seed gives the same answer.
+        bounds : {'worst', 'uniform'}
+            A bound at its worst sign for each pair and side, or drawn evenly over its range.
+
+        Returns
+        -------
+        Simulation
+            Fail fractions, quantiles, joint yield and good fields; lengths in nm.
+
+        Raises
+        ------
+        UsageError
+            When the flow judges no pair.
+        """
+        from flowplan.engine.simulate import Options, simulate
+
+        return simulate(self.result, Options(samples, seed, bounds))
 
     def to_records(self) -> list[dict[str, Any]]:
         """Return the entries as plain dictionaries, lengths in the file's unit."""

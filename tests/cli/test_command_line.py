@@ -15,6 +15,7 @@ from tests.cli.terminal import FLOWPLAN, on_a_terminal
 COMMANDS = [
     *("check", "margins", "chain", "tree", "report"),
     *("compare", "remedies", "levers", "propose"),
+    *("simulate", "measured"),
     *("new", "schema"),
 ]
 STYLE = re.compile(r"\x1b\[[0-9;]*m")

@@ -85,3 +85,9 @@ def test_normals_that_act_together_are_drawn_together():
     draws = draws_of(amounts, sources, 1.0, bounds_vary=False)
     assert np.abs(draws.forms) == pytest.approx(np.array([[5, 1, 3, 3], [10, 0, 6, 6]]))
     assert (draws.n_normal, draws.level.tolist()) == (3, [1, 1, 3, 1])
+
+
+def test_the_library_gives_the_same():
+    path = str(resource_folder("flows") / "pressure_sensor.yaml")
+    found = flowplan.analyse(flowplan.load(path)).simulate(samples=BLOCK, seed=3)
+    assert everything(found) == everything(simulate(result("pressure_sensor.yaml"), Options(BLOCK, seed=3)))

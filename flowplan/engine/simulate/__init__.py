@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from flowplan.engine.analysis import Result
+from flowplan.engine.analysis import Engine, Result
 from flowplan.engine.results import Entry
 from flowplan.engine.simulate.fields import FieldModel, Layout, simulate_fields
 from flowplan.engine.simulate.forms import field_forms, judged_entries, pair_forms
@@ -18,7 +18,6 @@ from flowplan.engine.simulate.results import Bounds, FieldYield, PairOutcome, Ra
 from flowplan.engine.simulate.tally import Histogram, PairTally
 from flowplan.engine.simulate.threads import plain_products
 from flowplan.errors import Diagnostic, UsageError
-from flowplan.model.flow import Flow
 from flowplan.model.geometry import field_size, whole_fields
 
 __all__ = ["Bounds", "FieldYield", "Options", "PairOutcome", "Rare", "Simulation", "simulate"]
@@ -120,7 +119,7 @@ class _Run:
         result, asked = self._result, self._options
         model = FieldModel(
             field_forms(result.engine, self._entries, bounds_vary=self._bounds_vary),
-            layout_of(result.flow),
+            layout_of(result.engine),
             result.engine.placement.sources,
             result.flow.sigma,
             bounds_vary=self._bounds_vary,
@@ -140,9 +139,9 @@ class _Run:
         return tuple(found[id(entry)] for entry in self._result.entries if id(entry) in found)
 
 
-def layout_of(flow: Flow) -> Layout:
+def layout_of(engine: Engine) -> Layout:
     """Return the wafer's whole fields; one at the centre where the flow does not say how large they are."""
-    width, height = field_size(flow)
-    centres = whole_fields(flow) or ((0.0, 0.0),)
-    half = (width / 2, height / 2) if flow.shapes else (0.0, 0.0)
+    width, height = field_size(engine.flow)
+    centres = whole_fields(engine.flow) or ((0.0, 0.0),)
+    half = (width / 2, height / 2) if engine.sites.n_points > 1 else (0.0, 0.0)
     return Layout(np.array(centres, dtype=np.float64), half)
