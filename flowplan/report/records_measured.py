@@ -45,7 +45,7 @@ def reading_record(reading: MeasuredReading, unit: str) -> Record:
         "reference": reading.reference,
         "n": tally.n,
         "outliers": tally.n_outliers,
-        "lots": sum(lot.total[0] > 0 for lot in tally.lots.values()),
+        "lots": tally.n_lots,
         "wafers": tally.n_wafers,
         "fields": tally.n_fields,
         **{axis: _axis(reading.axes[axis], splits[axis], unit) for axis in AXES},

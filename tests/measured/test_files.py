@@ -144,7 +144,7 @@ def test_bytes_that_are_no_text_do_not_stop_the_rest(read):
 def test_parquet_reads_the_same_and_tells_bad_rows_by_number(read):
     frame = pl.DataFrame(
         {
-            "mask": ["A", "A", None], "reference": ["B"] * 3, "lot": [1, 1, 1], "wafer": [7, 7, 7], "X": [15] * 3,
+            "mask": ["A", "A", None], "reference": ["B"] * 3, "lot": [1] * 3, "wafer": [7] * 3, "X": [15] * 3,
             "Y": [0.0] * 3, "dx": [1.5, None, 2.0], "dy": [1, 2, 3],
         }
     )  # fmt: skip

@@ -111,7 +111,7 @@ class Sizes:
                 tally = reading.tally
                 figures = (convert(reading.axes[axis].three_sigma, "nm", unit) for axis in axes)
                 spread = ", ".join(f"{axis} {v:.4g}" for axis, v in zip(axes, figures, strict=True))
-                wafers = f"{tally.n_wafers} wafers of {len(tally.lots)} lots"
+                wafers = f"{tally.n_wafers} wafers of {tally.n_lots} lots"
                 notes.setdefault(reading.mask, []).append(
                     f"alignment to {reading.reference} along {' and '.join(axes)} from {data}, "
                     f"{tally.n} rows on {wafers}, overlay 3 sigma {spread} {unit}"

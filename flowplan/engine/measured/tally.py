@@ -92,6 +92,11 @@ class Tally:
         """Number of rows that count."""
         return round(float(self.rows[0, 0]))
 
+    @property
+    def n_lots(self) -> int:
+        """Number of lots with rows that count."""
+        return sum(1 for lot in self.lots.values() if lot.total[0] > 0)
+
     def by_lot(self) -> FloatArray:
         """Return the sum over lots of s s' / n."""
         return _outer([lot.total for lot in self.lots.values()])
