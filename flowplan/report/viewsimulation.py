@@ -62,11 +62,29 @@ class HistogramView:
 
 @dataclass(frozen=True, slots=True)
 class GoodFields:
-    """The wafer map of the fields that hold: the larger the square, the fewer wafers hold there."""
+    """The fields that hold.
+
+    Attributes
+    ----------
+    frame, squares
+        The wafer map: the larger the square, the fewer wafers hold there.
+    words : str
+        What the map shows.
+    bars : str
+        Path of a histogram of the good fields of a wafer.
+    low, high : str
+        Its ends.
+    wafers : str
+        What it shows.
+    """
 
     frame: MapFrame
     squares: tuple[Squares, ...]
     words: str
+    bars: str
+    low: str
+    high: str
+    wafers: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,10 +114,7 @@ def _chart(outcome: PairOutcome, title: str, unit: str) -> HistogramView:
     keep = outcome.entry.keep
     low, width, counts = _bars(outcome.histogram, keep)
     split = round((keep - low) / width)
-    heights = np.where(counts > 0, np.maximum(1, np.rint(counts / counts.max() * (HEIGHT - 4))), 0).astype(
-        int
-    )
-    bars = [f"M{i * BAR + 2} {HEIGHT}v-{h}" if h else "" for i, h in enumerate(heights)]
+    bars = _paths(counts)
     figures = Figures.fitting(unit, (low, low + width * len(bars)))
     middle = figures.text(outcome.histogram.quantile(0.5))
     return HistogramView(
@@ -113,6 +128,12 @@ def _chart(outcome: PairOutcome, title: str, unit: str) -> HistogramView:
         kept=figures.text(keep),
         words=f"median {middle}, {figures.text(keep)} must remain, {ppm(outcome.rare.fail)} ppm fail",
     )
+
+
+def _paths(counts: FloatArray) -> list[str]:
+    """Return one stroke a bar, the highest as high as the drawing; what is there has at least one step."""
+    heights = np.where(counts > 0, np.maximum(1, np.rint(counts / counts.max() * (HEIGHT - 4))), 0)
+    return [f"M{i * BAR + 2} {HEIGHT}v-{h}" if h else "" for i, h in enumerate(heights.astype(int))]
 
 
 def _bars(histogram: Histogram, keep: float) -> tuple[float, float, FloatArray]:
@@ -139,4 +160,16 @@ def _good_fields(found: Simulation) -> GoodFields | None:
     one = "square" if frame.block > 1 else "field"
     lowest, highest = share_text(float(good.min())), share_text(float(good.max()))
     words = f"a {one} holds on {lowest} to {highest} of {fields.per_wafer.size} simulated wafers"
-    return GoodFields(frame, squares(places, levels(good).tolist()), words)
+    least, total = int(fields.per_wafer.min()), len(fields.centres)
+    step = -(-(total - least + 1) // _BARS)
+    least = total + 1 - step * _BARS
+    counts = np.bincount((fields.per_wafer.reshape(-1) - least) // step, minlength=_BARS)
+    return GoodFields(
+        frame,
+        squares(places, levels(good).tolist()),
+        words,
+        bars="".join(_paths(counts.astype(np.float64))),
+        low=str(max(0, least)),
+        high=str(total),
+        wafers=f"{fields.per_wafer.size} simulated wafers by how many of their fields hold",
+    )

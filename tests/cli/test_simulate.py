@@ -120,4 +120,5 @@ def test_map_of_good_fields_is_small(run):
     section = section[: section.index("</section>")]
     assert "Good fields on the wafer" in section
     assert section.count("<ellipse") == 2
+    assert "simulated wafers by how many of their fields hold" in section
     assert len(section) < 40_000

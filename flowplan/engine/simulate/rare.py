@@ -89,15 +89,24 @@ def _rare_row(model: PairModel, sides: _Sides, tilts: Tilts, row: int, random: n
     chance = tilts.chance[both]
     if not chance.any():
         return Rare(0.0, None)
-    shares = np.where(chance >= _SMALLEST * chance.max(), chance, 0.0)
-    shares = shares / shares.sum()
+    likely = chance >= _SMALLEST * chance.max()
+    both = np.concatenate([both[likely], both[~likely]])
+    kept = both[: likely.sum()]
     k = model.draws.n_normal
     overlay, edges = model.draws.forms[row], model.draws.forms[row + model.n_rows]
     flat = np.flatnonzero(sides.forms[both, k:].any(axis=0)) + k
-    joined = np.array([[np.hypot.reduce(overlay[:k]), 0.0], [0.0, np.hypot.reduce(edges[:k])]])
-    parts = np.concatenate([joined, np.stack([overlay[flat], edges[flat]])], axis=1)
-    forms = np.stack([-(parts[1] + parts[0]), -(parts[1] - parts[0])])
-    mixture = _Mixture(forms, tilts.theta[both], tilts.log_mean[both], sides.room[both], shares, 0.0, 2)
+    joined = np.diag([np.hypot.reduce(overlay[:k]), np.hypot.reduce(edges[:k])])
+    of_overlay, of_edges = np.concatenate([joined, np.stack([overlay[flat], edges[flat]])], axis=1)
+    sign = np.where(both < model.n_rows, 1.0, -1.0)[:, None]
+    mixture = _Mixture(
+        forms=-(of_edges + sign * of_overlay),
+        theta=tilts.theta[kept],
+        log_mean=tilts.log_mean[kept],
+        room=sides.room[both],
+        shares=tilts.chance[kept] / tilts.chance[kept].sum(),
+        plain=0.0,
+        n_normal=2,
+    )
     return _estimate(*mixture.moments(random, ROW_SAMPLES), ROW_SAMPLES)
 
 

@@ -105,7 +105,8 @@ class Simulation:
     pairs : tuple of PairOutcome
         The judged rows in file order.
     joint_yield : float
-        Share of the samples in which every judged row held.
+        Share of the samples in which every judged row held, each at its own worst point. A sample is
+        one draw of every source, as in one field that had the worst of everything.
     joint_yield_interval : tuple of float
         Its 95 % interval.
     product_yield : float
