@@ -9,6 +9,9 @@ which for equal s is s^2 (A^T A)^-1. Where s differs between x and y, C is the s
 the readings along each axis. Each part is factored, C = L L^T with L lower triangular (Cholesky, rows of
 no variance left out), so that column k of L is one independent scalar that moves parameter k and those
 after it. Positions are taken from the marks' centroid: the shift there is independent of all the rest.
+
+Root-sum-squares do not depend on how C is factored. The basis `linear` adds deviations source by source
+and takes the factors as they stand.
 """
 
 from collections import Counter
