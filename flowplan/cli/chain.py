@@ -12,7 +12,7 @@ from flowplan.engine.results import Entry, Parts, Verdict
 from flowplan.engine.sources import Source
 from flowplan.model.base import Axis
 from flowplan.model.flow import Flow
-from flowplan.report.textchain import explanation_record, mark_sites
+from flowplan.report.textchain import explanation_record, fitted_words, mark_sites
 from flowplan.report.textfigures import Figures, percent
 
 _SHOWN = 3
@@ -105,6 +105,8 @@ class _Page:
             read = ", ".join(f"{hop.child} reads {hop.reference}" for hop in hops)
             self._section(f"Alignment from mark sites: {read}")
             show_note(f"  {found.sites}; ± random of this reading alone, in its worst direction")
+            words = fitted_words(found, self.flow, self.figures.text)
+            emit(folded(f"  about the centre: {words}", 4))
             rows = [(f"{found.sites.count}, as planned", *self._grown(found.planned))]
             rows += [(str(count), *self._grown(growth)) for count, growth in found.tried]
             _, middle, edge = (f"{d:.4g} mm" for d in found.planned.distances)

@@ -5,12 +5,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from flowplan.engine.marksites import deviations
+from flowplan.engine.marksites import covariance, deviations, read_variance
 from flowplan.engine.sources import FloatArray
 from flowplan.model.base import WAFER, Axis
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import field_size, usable_radius
-from flowplan.model.marksites import MarkSites, centred, mixed_up
+from flowplan.model.marksites import MarkSites, Parameter, centred, mixed_up
 from flowplan.model.masks import Mask
 
 #: Centre, half way, edge: where the error is told.
@@ -45,8 +45,10 @@ class Outlook:
     ----------
     sites : MarkSites
         As planned.
+    fitted : tuple of (Parameter, float)
+        What is fitted, with one standard deviation of it about the centre [nm, urad or ppm].
     planned : Growth
-        Its error at the centre, half way and at the edge.
+        The exposure's error at the centre, half way and at the edge.
     radius : float
         Of the ring on which other numbers of marks are tried [mm].
     tried : tuple of (int, Growth)
@@ -54,6 +56,7 @@ class Outlook:
     """
 
     sites: MarkSites
+    fitted: tuple[tuple[Parameter, float], ...]
     planned: Growth
     radius: float
     tried: tuple[tuple[int, Growth], ...]
@@ -147,4 +150,7 @@ def outlook(flow: Flow, sites: MarkSites, counts: Iterable[int] = TRIED) -> Outl
     rings = [sites.on_ring(count, radius) for count in counts]
     fit = [ring for ring in rings if not any(mixed_up(ring.parameters, ring.places(flow.unit)))]
     tried = tuple((ring.count, growth(flow, ring)) for ring in fit)
-    return Outlook(sites, growth(flow, sites), radius, tried)
+    variance = read_variance(sites, flow.unit, flow.sigma)
+    spread = np.sqrt(np.diag(covariance(sites, flow.unit, (variance["x"], variance["y"])))).tolist()
+    fitted = tuple(zip(sites.parameters, spread, strict=True))
+    return Outlook(sites, fitted, growth(flow, sites), radius, tried)

@@ -1,5 +1,6 @@
 """The explanation of a chain as a JSON-ready record, lengths in the file's unit."""
 
+from collections.abc import Callable
 from typing import Any
 
 from flowplan.engine.explain import Change, Direct, Explanation, Hop, Shared
@@ -7,7 +8,8 @@ from flowplan.engine.markoutlook import Growth, Outlook, outlook, sites_read
 from flowplan.engine.results import Entry, Parts
 from flowplan.model.base import Axis
 from flowplan.model.flow import Flow
-from flowplan.model.marksites import MarkSites
+from flowplan.model.marksites import MarkSites, Parameter
+from flowplan.model.terms import SHAPE_DIMENSION
 from flowplan.report.records import entry_record, finite, in_unit, point_record, source_record
 from flowplan.units import significant
 
@@ -55,6 +57,10 @@ def outlook_record(found: Outlook, hops: list[Hop], axis: Axis, flow: Flow) -> R
         "model": found.sites.model,
         "over": found.sites.over,
         "marks": found.sites.count,
+        "fitted": {
+            parameter.name.replace(" ", "_"): _fitted(flow.confidence * sigma, parameter, flow.unit)
+            for parameter, sigma in found.fitted
+        },
         "distances": [significant(d) for d in found.planned.distances.tolist()],
         "random": errors(found.planned),
         "ring": {
@@ -62,6 +68,22 @@ def outlook_record(found: Outlook, hops: list[Hop], axis: Axis, flow: Flow) -> R
             "tried": [{"marks": count, "random": errors(growth)} for count, growth in found.tried],
         },
     }
+
+
+def _fitted(error: float, parameter: Parameter, unit: str) -> float | None:
+    """Return a fitted parameter's error in the file's unit, urad or ppm."""
+    is_length = SHAPE_DIMENSION[parameter.shape] == "length"
+    return in_unit(error, unit) if is_length else significant(error)
+
+
+def fitted_words(found: Outlook, flow: Flow, length: Callable[[float], str]) -> str:
+    """Return the errors of what is fitted in words, at the flow's confidence; `length` words a length."""
+    words = []
+    for parameter, sigma in found.fitted:
+        dimension, error = SHAPE_DIMENSION[parameter.shape], flow.confidence * sigma
+        unit = {"angle": " urad", "ratio": " ppm"}.get(dimension, "")
+        words.append(f"{parameter.name} ±{f'{error:.3g}{unit}' if unit else length(error)}")
+    return ", ".join(words)
 
 
 def _parts(parts: Parts, unit: str) -> Record:

@@ -8,6 +8,7 @@ import numpy as np
 from flowplan.engine.markoutlook import Growth, growth, outlook, sites_read
 from flowplan.model.base import AXES, Axis
 from flowplan.model.marksites import MarkSites
+from flowplan.report.textchain import fitted_words
 from flowplan.report.viewbase import Base, LayerName, plain
 from flowplan.report.viewmasks import size_words
 
@@ -69,6 +70,8 @@ class MarksView:
     ----------
     heading, per_mark : str
         What is fitted to how many marks, and how well one is read.
+    fitted : str
+        Errors of what is fitted.
     reads : tuple of (LayerName, LayerName)
         Who reads whose marks so.
     columns : tuple of str
@@ -85,6 +88,7 @@ class MarksView:
 
     heading: str
     per_mark: str
+    fitted: str
     reads: tuple[Read, ...]
     columns: tuple[str, ...]
     figures: str
@@ -121,6 +125,7 @@ def _view(base: Base, sites: MarkSites, reads: tuple[Read, ...]) -> MarksView:
     return MarksView(
         heading=str(sites)[0].upper() + str(sites)[1:],
         per_mark=size_words(base, sites.per_mark),
+        fitted=fitted_words(ahead, flow, base.length),
         reads=reads,
         columns=stops,
         figures="" if len(axes) == 1 else "; along x / along y",

@@ -2,6 +2,7 @@
 
 import json
 import math
+import re
 
 import numpy as np
 import pytest
@@ -111,6 +112,7 @@ def test_chain_shows_the_growth_of_each_alignment_on_it(run):
     shown = [line.split() for line in lines[at + 1 : at + 16]]
     assert ["marks", "centre", "30", "mm", "edge", "60", "mm"] in shown
     assert ["9,", "as", "planned", "10.00", "12.50", "18.03"] in shown
+    assert "about the centre: shift x ±10.00, shift y ±10.00, rotation ±0.25 urad" in lines[at + 3]
     assert ["4", "15.00", "18.75", "27.04"] in shown
     assert "Alignment from mark sites: C reads A" in lines
 
@@ -128,6 +130,7 @@ def test_chain_as_json(run):
         "model": "rigid",
         "over": "wafer",
         "marks": 9,
+        "fitted": {"shift_x": 10, "shift_y": 10, "rotation": 0.25},
         "distances": [0, 30, 60],
         "random": [10, 12.5, pytest.approx(math.hypot(10, 15))],
         "ring": {"radius": 40},
@@ -145,6 +148,7 @@ def test_the_report_draws_each_alignment_once(run, tmp_path):
     assert page.count('<a href="#marksites">') == 1
     assert "Rigid from 9 marks over the wafer" in page
     assert "Rigid from 2 marks over the field" in page
+    assert re.search(r"the fit gives shift x ±10\.\d*, shift y ±10\.\d*, rotation ±0\.25 urad\.", page)
 
 
 def test_a_report_without_marks_has_no_such_section(run, tmp_path):
