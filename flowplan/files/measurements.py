@@ -109,12 +109,13 @@ class Measurements:
                 partial(progress or _silent, number, passes),
             )
             self.n_rows += frame.height
-            good = frame.filter("good")
-            if good.height < frame.height:
+            if not frame["good"].all():
                 self._note_unreadable(frame)
-            del frame
-            if good.height:
-                yield self._rows(good)
+                frame = frame.filter("good")
+            if frame.height:
+                rows = self._rows(frame)
+                del frame
+                yield rows
 
     def warnings(self) -> tuple[Diagnostic, ...]:
         """Return the first unreadable rows, each with its place and reason."""

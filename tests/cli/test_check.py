@@ -165,7 +165,7 @@ def test_check_starts_without_the_heavy_parts(tmp_path, flow):
         "try: app(['check', sys.argv[1]], prog_name='flowplan')\n"
         "except SystemExit as end: assert end.code == 0\n"
         "loaded = {m.partition('.')[0] for m in sys.modules}\n"
-        "heavy = {'scipy', 'graphviz', 'pygraphviz', 'jinja2', 'rich'} & loaded\n"
+        "heavy = {'scipy', 'graphviz', 'pygraphviz', 'jinja2', 'rich', 'polars'} & loaded\n"
         "sys.exit(f'imported {heavy}' if heavy else 0)\n"
     )
     done = subprocess.run(

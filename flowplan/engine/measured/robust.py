@@ -16,7 +16,7 @@ LIMIT = 6.0
 #: MAD to standard deviation of normal errors, 1 / Phi^-1(3/4).
 MAD_TO_SIGMA = 1.482602218505602
 #: Rows from which the pattern is found.
-_MOST_ROWS = 100_000
+_MOST_ROWS = 20_000
 _HUBER = 1.345
 _SWEEPS = 25
 #: Wafers with fewer rows than this have no median worth taking off.
