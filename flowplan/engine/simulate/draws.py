@@ -16,8 +16,16 @@ from flowplan.model.terms import LEVELS, Kind, Level
 
 #: Samples in a block, small enough for a processor's cache.
 BLOCK = 2048
+_LEAST_BLOCK = 256
+#: Values of all rows together in a block.
+_MOST_VALUES = 2**20
 #: Relative differences of proportions that are rounding.
 _DIGITS = 11
+
+
+def block_of(n_rows: int) -> int:
+    """Return how many samples a block has, fewer where many rows would make its arrays large."""
+    return min(BLOCK, max(_LEAST_BLOCK, _MOST_VALUES // max(1, n_rows)))
 
 
 def generator(seed: int, *place: int) -> np.random.Generator:

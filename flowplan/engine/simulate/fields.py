@@ -10,7 +10,7 @@ from typing import Any
 
 import numpy as np
 
-from flowplan.engine.simulate.draws import BLOCK, Draws, Product, draws_of, generator
+from flowplan.engine.simulate.draws import BLOCK, Draws, Product, block_of, draws_of, generator
 from flowplan.engine.simulate.forms import FieldForms
 from flowplan.engine.simulate.intervals import clustered
 from flowplan.engine.simulate.results import FieldYield
@@ -123,8 +123,9 @@ class FieldModel:
         above = {b: product.of(drawn) for b, product in self._above.overlay}
         edges = self._above.edges.of(drawn)
         per_wafer, per_field = np.zeros(n_wafers, dtype=np.int64), np.zeros(n_fields, dtype=np.int64)
-        for start in range(0, n_wafers * n_fields, BLOCK):
-            wafer, place = divmod(np.arange(start, min(start + BLOCK, n_wafers * n_fields)), n_fields)
+        size = block_of(N_BASIS * self._n_rows)
+        for start in range(0, n_wafers * n_fields, size):
+            wafer, place = divmod(np.arange(start, min(start + size, n_wafers * n_fields)), n_fields)
             good = self._hold(self._field.draws.sample(random, len(wafer)), above, edges, wafer, place)
             per_wafer += np.bincount(wafer[good], minlength=n_wafers)
             per_field += np.bincount(place[good], minlength=n_fields)

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from flowplan.engine.simulate.draws import BLOCK, Draws, Product, draws_of, generator
+from flowplan.engine.simulate.draws import Draws, Product, block_of, draws_of, generator
 from flowplan.engine.simulate.forms import PairForms
 from flowplan.engine.simulate.tally import BINS, PairTally, Range
 from flowplan.engine.simulate.threads import Progress, spread
@@ -101,13 +101,13 @@ def simulate_pairs(
     progress : callable, optional
         Called with (blocks done, blocks in all).
     """
-    ranges = model.ranges()
+    ranges, size = model.ranges(), block_of(model.n_rows)
 
     def work(tally: PairTally, block: int) -> None:
-        n = min(BLOCK, samples - block * BLOCK)
+        n = min(size, samples - block * size)
         tally.add(model.left(model.draws.sample(generator(seed, _STREAM, block), n)))
 
-    blocks = -(-samples // BLOCK)
+    blocks = -(-samples // size)
     total, *others = spread(blocks, lambda: PairTally(ranges), work, threads, progress)
     for other in others:
         total.merge(other)

@@ -26,7 +26,8 @@ _OF_PAIRS, _OF_UNION = 2, 3
 ROW_SAMPLES, UNION_SAMPLES = 10_000, 10 * BLOCK
 #: Share of the union's draws without a tilt.
 _PLAIN = 0.05
-#: Sides less likely than this share of the likeliest need no component of their own.
+#: Sides less likely than this share of the likeliest are left out: all of a large flow's together are
+#: far below the sampling error.
 _SMALLEST = 1e-9
 
 
@@ -89,20 +90,18 @@ def _rare_row(model: PairModel, sides: _Sides, tilts: Tilts, row: int, random: n
     chance = tilts.chance[both]
     if not chance.any():
         return Rare(0.0, None)
-    likely = chance >= _SMALLEST * chance.max()
-    both = np.concatenate([both[likely], both[~likely]])
-    kept = both[: likely.sum()]
+    kept = both[chance >= _SMALLEST * chance.max()]
     k = model.draws.n_normal
     overlay, edges = model.draws.forms[row], model.draws.forms[row + model.n_rows]
-    flat = np.flatnonzero(sides.forms[both, k:].any(axis=0)) + k
+    flat = np.flatnonzero(sides.forms[kept, k:].any(axis=0)) + k
     joined = np.diag([np.hypot.reduce(overlay[:k]), np.hypot.reduce(edges[:k])])
     of_overlay, of_edges = np.concatenate([joined, np.stack([overlay[flat], edges[flat]])], axis=1)
-    sign = np.where(both < model.n_rows, 1.0, -1.0)[:, None]
+    sign = np.where(kept < model.n_rows, 1.0, -1.0)[:, None]
     mixture = _Mixture(
         forms=-(of_edges + sign * of_overlay),
         theta=tilts.theta[kept],
         log_mean=tilts.log_mean[kept],
-        room=sides.room[both],
+        room=sides.room[kept],
         shares=tilts.chance[kept] / tilts.chance[kept].sum(),
         plain=0.0,
         n_normal=2,
@@ -134,13 +133,11 @@ def rare_union(model: PairModel, pairs: list[Rare], seed: int, threads: int) -> 
     if not shares.any():
         return Rare(0.0, None)
     kept = np.flatnonzero(shares >= _SMALLEST * shares.max())
-    varying = np.flatnonzero(sides.forms.any(axis=1) & tilts.possible)
-    order = np.concatenate([kept, np.setdiff1d(varying, kept)])
     mixture = _Mixture(
-        sides.forms[order],
+        sides.forms[kept],
         tilts.theta[kept],
         tilts.log_mean[kept],
-        sides.room[order],
+        sides.room[kept],
         (1 - _PLAIN) * shares[kept] / shares[kept].sum(),
         _PLAIN,
         model.draws.n_normal,
@@ -158,15 +155,15 @@ def rare_union(model: PairModel, pairs: list[Rare], seed: int, threads: int) -> 
 
 @dataclass(frozen=True, slots=True)
 class _Mixture:
-    """Tilted densities in shares, and the sides that may fail; the first sides have the tilts.
+    """Tilted densities in shares, one a side that may fail.
 
     Attributes
     ----------
     forms, room
         As in `_Sides`, for the sides that are looked at.
-    theta, log_mean : ndarray, shape (n_components,)
-        The tilts of the first sides.
-    shares : ndarray, shape (n_components,)
+    theta, log_mean : ndarray, shape (n_sides,)
+        Their tilts.
+    shares : ndarray, shape (n_sides,)
         Their shares; with `plain`, the share without a tilt, they add up to 1.
     n_normal : int
         How many of the scalars are normal.
@@ -192,7 +189,7 @@ class _Mixture:
         drawn[:, k:] = tilted_uniform(random.random((n, drawn.shape[1] - k)), tilts[:, k:])
         values = drawn @ self.forms.T
         failing = (values > self.room).any(axis=1)
-        exponent = values[failing, :n_tilts] * self.theta - self.log_mean
+        exponent = values[failing] * self.theta - self.log_mean
         with np.errstate(over="ignore"):
             density = np.exp(exponent) @ self.shares + self.plain
         weights = 1 / density

@@ -8,6 +8,8 @@ from flowplan.engine.sources import FloatArray, IntArray
 
 #: Bins between the ends of a residual's range.
 BINS = 2048
+#: Rows sorted into their bins at once.
+_ROWS = 64
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,7 +81,7 @@ class PairTally:
         self._per_bin = np.divide(1.0, ranges.width, out=np.zeros_like(ranges.width), where=ranges.width > 0)[
             :, None
         ]
-        self._first = (np.arange(len(ranges.low), dtype=np.int64) * BINS)[:, None]
+        self._first = (np.arange(_ROWS, dtype=np.int64) * BINS)[:, None]
         self.fails = np.zeros(len(ranges.low), dtype=np.int64)
         self.counts = np.zeros((len(ranges.low), BINS), dtype=np.int64)
         self.good = 0
@@ -92,9 +94,11 @@ class PairTally:
         left -= self._low
         left *= self._per_bin
         np.clip(left, 0, BINS - 1, out=left)
-        place = left.astype(np.int64)
-        place += self._first
-        self.counts += np.bincount(place.reshape(-1), minlength=self.counts.size).reshape(self.counts.shape)
+        for start in range(0, len(left), _ROWS):
+            counts = self.counts[start : start + _ROWS]
+            place = left[start : start + _ROWS].astype(np.int64)
+            place += self._first[: len(place)]
+            counts += np.bincount(place.reshape(-1), minlength=counts.size).reshape(counts.shape)
 
     def merge(self, other: "PairTally") -> None:
         """Add another tally's counts."""

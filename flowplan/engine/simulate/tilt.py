@@ -15,7 +15,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from flowplan.engine.sources import BoolArray, FloatArray
+from flowplan.engine.sources import FloatArray
 
 _HALVINGS = 80
 #: Tilts below this are series, to keep the digits.
@@ -39,11 +39,6 @@ class Tilts:
     theta: FloatArray
     log_mean: FloatArray
     chance: FloatArray
-
-    @property
-    def possible(self) -> BoolArray:
-        """Which sides can fail."""
-        return self.chance > 0
 
 
 def tilts_of(variance: FloatArray, flat: FloatArray, room: FloatArray) -> Tilts:
