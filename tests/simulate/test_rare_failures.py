@@ -72,6 +72,13 @@ def test_what_always_happens():
     assert (found.pairs[0].rare.fail, found.rare.fail, found.joint_yield) == (1.0, 1.0, 0.0)
 
 
+def test_what_nearly_always_happens_is_not_called_certain():
+    """A room of -4.5 sigma: all draws fail, yet the fraction is not exactly 1."""
+    found = simulated(one_pair({"a": {"random": 1.0, "bound": 4.5}}, 0.0), 100)
+    check(found.pairs[0].rare, 1.0)
+    check(found.rare, 1.0)
+
+
 @pytest.mark.parametrize("drawn", [2.0, 6.0, 12.0])
 def test_edges_that_close_both_sides_at_once_count_once(drawn):
     """CD dominates, so both sides fail together; the closed form adds them, the simulation does not."""

@@ -20,7 +20,7 @@ _LEAST_BLOCK = 256
 #: Values of all rows together in a block.
 _MOST_VALUES = 2**20
 #: Relative differences of proportions that are rounding.
-_DIGITS = 11
+_SAME = 1e-11
 
 
 def block_of(n_rows: int) -> int:
@@ -130,15 +130,23 @@ def _is(sources: Sequence[Source], kind: Kind) -> np.ndarray:
 
 
 def _together(columns: FloatArray, level: IntArray) -> tuple[FloatArray, IntArray]:
-    """Join columns of one level that are proportional: their sizes add up as variances."""
+    """Join columns of one level that are proportional: their sizes add up as variances.
+
+    Columns are brought to one scale and told apart by two random projections, so that long columns
+    cost no more than to read them; what falls together by chance alone stays apart.
+    """
     if not columns.shape[1]:
         return columns, level
     size = np.abs(columns).max(axis=0)
-    lead = (np.abs(columns) >= size * (1 - 10.0**-_DIGITS)).argmax(axis=0)
+    lead = (np.abs(columns) >= size * (1 - _SAME)).argmax(axis=0)
     scale = columns[lead, np.arange(len(lead))]
-    shape = np.round(columns / scale, _DIGITS) + 0.0
-    _, first, place = np.unique(np.vstack([shape, level]), axis=1, return_index=True, return_inverse=True)
-    variance = np.bincount(place.reshape(-1), weights=scale**2, minlength=len(first))
-    order = np.argsort(first)
-    first, variance = first[order], variance[order]
-    return columns[:, first] / scale[first] * np.sqrt(variance), level[first]
+    shape = columns / scale
+    marks = np.random.default_rng(0).standard_normal((2, len(columns))) @ shape
+    keys = np.vstack([np.round(marks / _SAME**0.5), level, lead])
+    _, first, place = np.unique(keys, axis=1, return_index=True, return_inverse=True)
+    joined = first[place.reshape(-1)]
+    alone = np.abs(shape - shape[:, joined]).max(axis=0) > _SAME
+    joined[alone] = np.flatnonzero(alone)
+    kept = np.unique(joined)
+    variance = np.bincount(joined, weights=scale**2, minlength=len(scale))[kept]
+    return shape[:, kept] * np.sqrt(variance), level[kept]

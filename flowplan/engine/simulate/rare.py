@@ -23,7 +23,7 @@ from flowplan.engine.sources import FloatArray
 
 _OF_PAIRS, _OF_UNION = 2, 3
 #: Samples of one row's estimate and of the union's.
-ROW_SAMPLES, UNION_SAMPLES = 10_000, 10 * BLOCK
+ROW_SAMPLES, UNION_SAMPLES = 6000, 10 * BLOCK
 #: Share of the union's draws without a tilt.
 _PLAIN = 0.05
 #: Sides less likely than this share of the likeliest are left out: all of a large flow's together are
@@ -201,4 +201,6 @@ def _estimate(first: float, second: float, n: int) -> Rare:
     if mean == 0:
         return Rare(0.0, None)
     variance = max(0.0, second / n - mean**2) / n
-    return Rare(mean, variance**0.5 / mean)
+    return Rare(
+        mean, max(1 / n, variance**0.5 / mean)
+    )  # draws that all fail leave room for one that does not

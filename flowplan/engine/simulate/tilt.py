@@ -53,25 +53,41 @@ def tilts_of(variance: FloatArray, flat: FloatArray, room: FloatArray) -> Tilts:
     room : ndarray, shape (n_sides,)
         Room [nm].
     """
-    flat = np.abs(flat)
+    flat = -np.sort(-np.abs(flat), axis=1)
+    flat = flat[:, flat.any(axis=0)]  # as many as the row with the most of them has
     reach = flat.sum(axis=1)
     impossible = (variance == 0) & (reach <= room)
     rare = (room > 0) & ~impossible
-    with np.errstate(divide="ignore", invalid="ignore"):
-        scale = np.sqrt(variance + (flat**2).sum(axis=1) / 3)
-        # Uniform parts only add to K', so the normal part alone needs the largest tilt; without one,
-        # K' is within 1/theta a uniform of its end.
-        high = np.where(variance > 0, room / variance, flat.shape[1] / np.maximum(reach - room, 1e-300))
-    low, high = np.zeros(len(room)), np.where(rare, high, 0.0)
-    for _ in range(_HALVINGS):
-        middle = (low + high) / 2
-        short = middle * variance + _lean(middle[:, None] * flat, flat).sum(axis=1) < room
-        low, high = np.where(short, middle, low), np.where(short, high, middle)
+    scale = np.sqrt(variance + (flat**2).sum(axis=1) / 3)
+    high = np.where(rare, _largest(variance, flat, reach, room), 0.0)
+    mixed = np.flatnonzero(rare & (reach > 0))
+    high[mixed] = _edge(variance[mixed], flat[mixed], room[mixed], high[mixed])
     theta = high
     log_mean = theta**2 * variance / 2 + log_mean_uniform(theta[:, None] * flat).sum(axis=1)
     # Probability of the tail beyond the tilted mean, by its leading term, at most 1.
     chance = np.exp(log_mean - theta * np.where(rare, room, 0.0)) / (1 + theta * scale)
     return Tilts(theta, log_mean, np.where(impossible, 0.0, chance))
+
+
+def _largest(variance: FloatArray, flat: FloatArray, reach: FloatArray, room: FloatArray) -> FloatArray:
+    """Return tilts that are surely large enough, exact where all is normal.
+
+    Uniform parts only add to K', so that the normal part alone needs the largest tilt; without one,
+    each uniform's mean is within 1/theta of its end.
+    """
+    with np.errstate(divide="ignore", invalid="ignore"):
+        alone = flat.shape[1] / np.maximum(reach - room, 1e-300)
+        return np.asarray(np.where(variance > 0, room / variance, alone))
+
+
+def _edge(variance: FloatArray, flat: FloatArray, room: FloatArray, high: FloatArray) -> FloatArray:
+    """Return the tilts with K' = room by halving, between 0 and what is large enough."""
+    low = np.zeros_like(high)
+    for _ in range(_HALVINGS):
+        middle = (low + high) / 2
+        short = middle * variance + _lean(middle[:, None] * flat, flat).sum(axis=1) < room
+        low, high = np.where(short, middle, low), np.where(short, high, middle)
+    return high
 
 
 def _lean(tilt: FloatArray, flat: FloatArray) -> FloatArray:
