@@ -171,11 +171,12 @@ def _write(name: str, opened: Opened, taken: Taken, output: str) -> None:
         return
     from flowplan.files.alignments import write_alignments
 
-    if not taken.sizes.found:
+    choices = taken.sizes.choices()
+    if not choices:
         tell("these data say nothing about an alignment: nothing is written")
         return
     shown = "<stdin>" if name == STDIN else name
     origins = taken.sizes.origins(taken.measured, Path(taken.data.source.file).name)
-    written = write_alignments(opened.text, opened.flow, taken.sizes.choices(), origins, shown)
+    written = write_alignments(opened.text, opened.flow, choices, origins, shown)
     write_output(output, written, flow=name)
-    tell(f"wrote {printable(output)}: {len(taken.sizes.found)} measured alignments")
+    tell(f"wrote {printable(output)}: {len(choices)} measured alignments")

@@ -200,7 +200,7 @@ def part_text(variance: float | None, figures: Figures) -> str:
 
 
 def _alignments(flow: Flow, found: Sequence[Found], figures: Figures) -> TableText:
-    names = ("reading", "", "planned", "measured", "offset", "")
+    names = ("reading", "", "planned", "measured", "±", "offset", "")
     pairs = [None, *((one.mask, one.reference) for one in found)]
     rows = [
         (
@@ -208,16 +208,18 @@ def _alignments(flow: Flow, found: Sequence[Found], figures: Figures) -> TableTe
             one.axis,
             planned_alignment(flow, one, figures),
             f"{one.random:g}",
+            _NONE if one.error is None else f"{one.error:.2g}",
             f"{one.offset:g}" if one.offset else _NONE,
-            "the other terms alone are more" if one.exceeded else "",
+            "others exceed it" if one.exceeded else "",
         )
         for i, one in enumerate(found)
     ]
     legend = (
-        f"alignment at {flow.sigma:g} sigma in {flow.unit}: measured spread less the flow's other terms;",
+        f"alignment at {flow.sigma:g} sigma in {flow.unit}: measured spread less the flow's other terms, ±",
+        "its standard error; where others exceed what was measured the flow keeps its figure;",
         "offset: a mean beyond twice its standard error; -o NEW.yaml writes these into the flow",
     )
-    headings = tuple((name, 2 <= i <= 4) for i, name in enumerate(names))
+    headings = tuple((name, 2 <= i <= 5) for i, name in enumerate(names))
     return TableText("What it says about alignment", headings, tuple(rows), legend)
 
 

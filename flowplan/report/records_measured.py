@@ -97,5 +97,6 @@ def _size(found: Found) -> Record:
         "axis": found.axis,
         "alignment": finite(found.random),
         "offset": finite(found.offset),
+        "alignment_error": found.error,
         "exceeded": found.exceeded,
     }

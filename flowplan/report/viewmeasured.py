@@ -21,8 +21,8 @@ _HALF = 100
 _LONGEST = 22.0
 #: Half the size of the field's box in a map.
 _BOX = 80
-#: A bar that is as long as the larger of measured and planned; the chart's units.
-BAR_WIDTH = 240
+#: The bar of what is planned, the same for all, and the longest bar of what is measured.
+PLAN_LENGTH, BAR_WIDTH = 150, 240
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,7 +65,7 @@ class VectorMap:
 
 @dataclass(frozen=True, slots=True)
 class PlanBar:
-    """Measured |mean| + 3 sigma against the plan, along one axis; lengths of bars in the chart's units."""
+    """Measured |mean| + 3 sigma against the plan, along one axis; the bar is measured over planned."""
 
     reading: str
     axis: str
@@ -73,7 +73,6 @@ class PlanBar:
     planned: str
     ratio: str
     measured_length: float
-    planned_length: float
     exceeds: bool
 
 
@@ -93,6 +92,7 @@ class MeasuredView:
     text: MeasuredText
     bars: tuple[PlanBar, ...]
     bar_width: int
+    plan_length: int
     readings: tuple[ReadingMaps, ...]
     without_maps: int
 
@@ -109,6 +109,7 @@ def measured_view(taken: Taken) -> MeasuredView:
         measured_text(taken),
         _bars(measured, figures),
         BAR_WIDTH,
+        PLAN_LENGTH,
         tuple(_maps(measured, reading, figures) for reading in shown),
         len(measured.readings) - len(shown),
     )
@@ -130,8 +131,6 @@ def _bars(measured: Measured, figures: Figures) -> tuple[PlanBar, ...]:
         for axis, of_axis in reading.axes.items()
         if of_axis.plan and math.isfinite(of_axis.sigma)
     ]
-    longest = max((max(f.mean_plus_3sigma, p.mean_plus_3sigma) for _, _, f, p in both if p), default=0.0)
-    scale = BAR_WIDTH / longest if longest else 0.0
     return tuple(
         PlanBar(
             reading.name,
@@ -139,12 +138,11 @@ def _bars(measured: Measured, figures: Figures) -> tuple[PlanBar, ...]:
             figures.text(f.mean_plus_3sigma),
             figures.text(p.mean_plus_3sigma),
             ratio_text(f),
-            round(f.mean_plus_3sigma * scale, 1),
-            round(p.mean_plus_3sigma * scale, 1),
+            round(min(PLAN_LENGTH * f.mean_plus_3sigma / p.mean_plus_3sigma, BAR_WIDTH), 1),
             f.mean_plus_3sigma > p.mean_plus_3sigma,
         )
         for reading, axis, f, p in both
-        if p
+        if p and p.mean_plus_3sigma
     )
 
 

@@ -110,18 +110,38 @@ def test_terms_larger_than_what_was_measured_leave_no_alignment(tmp_path):
     _, file = made(tmp_path, lots=2, wafers=2)
     louder = parse(FLOW.replace("field error: {random: 30}", "field error: {random: 900}")).flow
     found = take_measurements(louder, file).sizes.found
-    assert {(one.random, one.exceeded) for one in found} == {(0.0, True)}
+    assert {(one.random, one.error, one.exceeded) for one in found} == {(0.0, None, True)}
+    assert take_measurements(louder, file).sizes.choices() == {}
+
+
+def test_the_error_of_an_alignment_is_what_other_seeds_scatter_by(tmp_path):
+    found = []
+    for seed in range(25):
+        flow, file = made(
+            tmp_path, FLOW.replace("drift: {random: 45", "drift: {random: 1"), lots=1, wafers=12, seed=seed
+        )
+        found.append(
+            next(f for f in take_measurements(flow, file).sizes.found if (f.mask, f.axis) == ("B", "y"))
+        )
+    scatter = np.std([f.random for f in found], ddof=1)
+    # 25 draws tell a standard deviation to 14 percent; three times that are allowed.
+    assert np.mean([f.error for f in found]) == pytest.approx(scatter, rel=0.45)
+    assert np.mean([f.random for f in found]) == pytest.approx(90, abs=3 * scatter / 5)
 
 
 def test_a_mask_on_the_back_gets_its_offset_in_its_own_sense(tmp_path):
-    text = FLOW.replace("id: B\n", "id: B\n    side: back\n").replace(
-        "    aligns_to: A   # reads A",
-        "    aligns_to: {mask: A, alignment: {random: 6, offset: {x: 40, y: 25}}}",
+    text = (
+        FLOW.replace("drift: {random: 45", "drift: {random: 1")
+        .replace("id: B\n", "id: B\n    side: back\n")
+        .replace(
+            "    aligns_to: A   # reads A",
+            "    aligns_to: {mask: A, alignment: {random: 24, offset: {x: 40, y: 25}}}",
+        )
     )
     flow, file = made(tmp_path, text, lots=4, wafers=4)
     found = {(f.mask, f.axis): f for f in take_measurements(flow, file).sizes.found}
     choices = take_measurements(flow, file).sizes.choices()
-    assert found["B", "x"].offset == pytest.approx(40, abs=25)
+    assert found["B", "x"].offset == pytest.approx(40, abs=8)  # four standard errors of 16 wafers
     again = take_measurements(parse(write_alignments(text, flow, choices, {})).flow, file)
     for axis in "xy":
         figures = reading(again, "B", "A").axes[axis]

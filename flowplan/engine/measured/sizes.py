@@ -24,6 +24,7 @@ from flowplan.engine.measured.summary import Measured, MeasuredReading
 from flowplan.engine.sources import N_BASIS
 from flowplan.model.base import AXES, Axis, PerAxis
 from flowplan.model.edits import Readings, with_references
+from flowplan.model.flow import Flow
 from flowplan.model.marksites import MarkSites
 from flowplan.model.masks import Mask, Reading
 from flowplan.model.terms import Level, Size
@@ -47,8 +48,11 @@ class Found:
         Along which axis.
     random, offset : float
         At the flow's `sigma`, and signed, in the flow's unit; rounded.
+    error : float or None
+        Standard error of `random`, about; None where it is 0 or one wafer tells nothing.
     exceeded : bool
-        Whether the flow's other terms alone are larger than what was measured, so that 0 is left.
+        Whether the flow's other terms alone are larger than what was measured, so that 0 is left and
+        the flow keeps its own figure.
     varies : str or None
         How often the flow says that the alignment is redrawn; this stays.
     """
@@ -58,6 +62,7 @@ class Found:
     axis: Axis
     random: float
     offset: float
+    error: float | None
     exceeded: bool
     varies: Level | None = None
 
@@ -81,6 +86,8 @@ class Sizes:
         """Return what each mask reads, with the alignments found."""
         by_reading: dict[tuple[str, str], list[Found]] = {}
         for one in self.found:
+            if one.exceeded:
+                continue
             by_reading.setdefault((one.mask, one.reference), []).append(one)
         chosen: dict[tuple[str, Axis], Readings] = {}
         for (mask, reference), both in by_reading.items():
@@ -105,7 +112,7 @@ class Sizes:
             axes = [
                 one.axis
                 for one in self.found
-                if (one.mask, one.reference) == (reading.mask, reading.reference)
+                if (one.mask, one.reference) == (reading.mask, reading.reference) and not one.exceeded
             ]
             if axes:
                 tally = reading.tally
@@ -185,8 +192,29 @@ def _found(engine: Engine, mask: Mask, reading: MeasuredReading, axis: Axis) -> 
     size = max(random, abs(offset), convert(figures.three_sigma, "nm", flow.unit))
     step = 10.0 ** (math.floor(math.log10(size)) + 1 - _DIGITS) if size else 1.0
     return Found(
-        mask.id, reading.reference, axis, _rounded(random, step), _rounded(offset, step), left < 0, varies
+        mask.id,
+        reading.reference,
+        axis,
+        random=_rounded(random, step),
+        offset=_rounded(offset, step),
+        error=_error(reading, axis, left, flow),
+        exceeded=left < 0,
+        varies=varies,
     )
+
+
+def _error(reading: MeasuredReading, axis: Axis, left: float, flow: Flow) -> float | None:
+    """Return the standard error of an alignment in the flow's unit.
+
+    What wafers have in common is the part known worst: the variance of n wafers has the standard error
+    sqrt(2 / (n - 1)) of itself, and that of a root is half of it over the root.
+    """
+    n, split = reading.tally.n_wafers, reading.axes[axis].split
+    if n < 2 or left <= 0:
+        return None
+    common = max(split.lot or 0.0, 0.0) + max(split.wafer or 0.0, 0.0)
+    of_variance = common * math.sqrt(2 / (n - 1))
+    return significant(convert(flow.sigma * of_variance / (2 * math.sqrt(left)), "nm", flow.unit), 3)
 
 
 def _rounded(value: float, step: float) -> float:
