@@ -15,6 +15,8 @@ from flowplan.engine.sources import FloatArray, Source
 _STREAM = 0
 #: Standard deviations that a histogram reaches; what is drawn beyond counts in its end bin.
 _REACH = 7.0
+#: Counts of all threads' histograms together; more threads than hold them do not help.
+_MOST_COUNTS = 2**25
 
 
 @dataclass(frozen=True, slots=True)
@@ -102,6 +104,7 @@ def simulate_pairs(
         Called with (blocks done, blocks in all).
     """
     ranges, size = model.ranges(), block_of(model.n_rows)
+    threads = min(threads, max(1, _MOST_COUNTS // (model.n_rows * BINS)))
 
     def work(tally: PairTally, block: int) -> None:
         n = min(size, samples - block * size)
