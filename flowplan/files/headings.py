@@ -21,6 +21,8 @@ HEADINGS: dict[str, tuple[str, ...]] = {
 }
 WORDS = ("mask", "reference", "lot", "wafer")
 NUMBERS = tuple(name for name in HEADINGS if name not in WORDS)
+#: A number beyond this, in mm or in the unit of a flow, is no measurement of a wafer.
+MOST = 1e12
 #: Without a lot all wafers are one lot's, without sites all rows stand at their field's centre.
 OPTIONAL = {
     "lot": "all rows count as one lot",

@@ -4,11 +4,12 @@ import csv
 import re
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from flowplan.errors import Diagnostic, FlowError, Span
-from flowplan.files.headings import HEADINGS, NUMBERS, WORDS, Columns, find_columns
+from flowplan.files.headings import HEADINGS, MOST, NUMBERS, WORDS, Columns, find_columns
 
 if TYPE_CHECKING:
     import polars as pl
@@ -16,9 +17,10 @@ if TYPE_CHECKING:
 #: Lines before the first row: the headings.
 LINES_BEFORE = 1
 _SAMPLE = 65_536
+_BLOCK = 1 << 24
 _SEPARATORS = ",;\t|"
 _DECIMAL_COMMA = re.compile(r"(?<![\d,.])-?\d+,\d+(?![\d,.])")
-_PADDED = re.compile(r'[,;\t|] | [,;\t|\r\n]|"')
+_PADDED = re.compile(r"[,;\t|] | [,;\t|\r\n]")
 #: A sign that no line of text holds, so that a line is read as one piece.
 _NOWHERE = "\x1f"
 
@@ -88,6 +90,11 @@ class Source:
 
         try:
             try:
+                frame = self._collect(number, passes)
+                if self._patient or self.layout is None or frame["good"].all():
+                    return frame
+                # Perhaps only spaces stand around the numbers; only a look at each line tells.
+                self._patient = True
                 return self._collect(number, passes)
             except (pl.exceptions.ComputeError, pl.exceptions.SchemaError):
                 # A row with more fields than headings: look at every line by itself.
@@ -102,7 +109,7 @@ class Source:
         import polars as pl
 
         is_good = pl.all_horizontal(
-            *(pl.col(name).is_not_null() for name in WORDS), *(pl.col(name).is_finite() for name in NUMBERS)
+            *(pl.col(name).is_not_null() for name in WORDS), *(pl.col(name).abs() <= MOST for name in NUMBERS)
         ).fill_null(value=False)
         rows = self._query(self._patient).with_columns(good=is_good)
         if passes > 1:
@@ -152,7 +159,13 @@ def _csv(file: str, text: str, sampled: int, size: int, named: Mapping[str, str]
     def query(patient: bool) -> "pl.LazyFrame":
         return _patient_rows(file, layout) if patient else _fast_rows(file, layout)
 
-    return Source(file, columns, layout, query, rows, patient=bool(_PADDED.search(body)))
+    return Source(file, columns, layout, query, rows, patient=bool(_PADDED.search(body)) or _is_quoted(file))
+
+
+def _is_quoted(file: str) -> bool:
+    """Whether a quote stands anywhere in a file: one without its fellow could swallow all that follows."""
+    with Path(file).open("rb") as stream:
+        return any(b'"' in block for block in iter(partial(stream.read, _BLOCK), b""))
 
 
 def _fast_rows(file: str, layout: Layout) -> "pl.LazyFrame":
@@ -170,6 +183,7 @@ def _fast_rows(file: str, layout: Layout) -> "pl.LazyFrame":
         schema=schema,
         separator=layout.separator,
         decimal_comma=layout.decimal_comma,
+        quote_char=None,
         encoding="utf8-lossy",
         ignore_errors=True,
         row_index_name="row",

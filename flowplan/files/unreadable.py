@@ -1,13 +1,12 @@
 """What is wrong with a row that cannot be read: the line itself says it best."""
 
-import csv
 import math
 from collections.abc import Sequence
 from itertools import islice
 from pathlib import Path
 
 from flowplan.errors import Diagnostic, Span, in_brief
-from flowplan.files.headings import NUMBERS
+from flowplan.files.headings import MOST, NUMBERS
 from flowplan.files.measuredrows import LINES_BEFORE, Layout
 
 _HINT = "mend the row, or leave it out"
@@ -49,15 +48,16 @@ def _lines(file: str, numbers: Sequence[int]) -> list[tuple[int, str]]:
 
 
 def _finding(place: Span, text: str, layout: Layout) -> Diagnostic:
-    fields = next(csv.reader([text], delimiter=layout.separator), [])
+    fields = [field.strip(' "') for field in text.split(layout.separator)]
     column, message = 1, "this row cannot be read"
     if not text.strip():
         message = "an empty line among the rows"
     elif len(fields) != layout.columns.count:
-        message = f"{len(fields)} fields where the headings are {layout.columns.count}"
+        inside = ", those inside quotes counted" if '"' in text else ""
+        message = f"{len(fields)} fields where the headings are {layout.columns.count}{inside}"
     else:
         for name, at in sorted(layout.columns.place.items(), key=lambda item: item[1]):
-            wrong = _wrong(name, fields[at].strip(), decimal_comma=layout.decimal_comma)
+            wrong = _wrong(name, fields[at], decimal_comma=layout.decimal_comma)
             if wrong:
                 message = wrong
                 column = 1 + len(layout.separator.join(text.split(layout.separator)[:at])) + bool(at)
@@ -74,4 +74,6 @@ def _wrong(name: str, text: str, *, decimal_comma: bool) -> str:
         value = float(text.replace(",", ".") if decimal_comma else text)
     except ValueError:
         return f"{name} is not a number: {text!r}"
-    return "" if math.isfinite(value) else f"{name} is not a finite number: {text!r}"
+    if not math.isfinite(value):
+        return f"{name} is not a finite number: {text!r}"
+    return "" if abs(value) <= MOST else f"{name} is too large for a wafer: {text!r}"

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 from flowplan.engine.measured.fit import FIELD_TERMS, WAFER_TERMS
 from flowplan.engine.measured.nested import LEVELS
-from flowplan.engine.measured.sizes import Found
+from flowplan.engine.measured.sizes import Found, alignment_of
 from flowplan.engine.measured.summary import AxisFigures, MeasuredReading
 from flowplan.model.base import AXES, Axis
 from flowplan.model.flow import Flow
@@ -228,7 +228,7 @@ def planned_alignment(flow: Flow, found: Found, figures: Figures) -> str:
     mask = next(mask for mask in flow.masks if mask.id == found.mask)
     axis: Axis = found.axis
     reading = next(r for r in mask.aligns_to.on(axis) if r.mask == found.reference)
-    size = reading.alignment or flow.tools[mask.tool].alignment
+    size = alignment_of(flow.tools[mask.tool], reading)
     if size is None or isinstance(size, MarkSites) or size.random is None:
         return _NONE
     return f"{convert(size.random.on(axis).in_base(flow.unit), 'nm', figures.unit):.6g}"

@@ -3,6 +3,8 @@
 import numpy as np
 import polars as pl
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from flowplan.errors import FlowError, UsageError
 from flowplan.files.headings import parse_columns
@@ -98,8 +100,14 @@ def test_without_lot_and_sites_the_rest_is_read(read):
         (",ACTIVE,L1,3,15,-15,1,2,4,-6", 1, "mask is empty"),
         ("GATE,ACTIVE,L1,3,15,-15,1,2,nan,-6", 29, "dx is not a finite number: 'nan'"),
         ("GATE,ACTIVE,L1,3,15,-15,1,2,4,inf", 31, "dy is not a finite number: 'inf'"),
+        ("GATE,ACTIVE,L1,3,15,-1e200,1,2,4,5", 21, "field_y is too large for a wafer: '-1e200'"),
         ("GATE,ACTIVE,L1,3,15,-15,1,2,4", 1, "9 fields where the headings are 10"),
         ("GATE,ACTIVE,L1,3,15,-15,1,2,4,5,-6", 1, "11 fields where the headings are 10"),
+        (
+            '"GATE, 1",ACTIVE,L1,3,15,-15,1,2,4,5',
+            1,
+            "11 fields where the headings are 10, those inside quotes counted",
+        ),
         ("", 1, "an empty line among the rows"),
     ],
 )
@@ -192,3 +200,34 @@ def test_few_rows_at_once_bring_every_row_once_and_no_wafer_twice(read):
         assert all(names[r][0] == lines[i].split(",")[0] for r, i in zip(rows.reading, rows.row, strict=True))
         wafers += sorted(inside)
     assert len(wafers) == len(set(wafers)) == 20
+
+
+@given(
+    st.lists(
+        st.text(st.sampled_from('AB1.,;"-+e \t\u00e9#'), max_size=24)
+        | st.just(ROW.strip())
+        | st.just(ROW.strip().replace("4.5", "1e400")),
+        max_size=8,
+    )
+)
+@settings(max_examples=60)
+def test_whatever_the_lines_hold_every_row_is_read_or_counted(tmp_path_factory, lines):
+    file = tmp_path_factory.mktemp("any") / "data.csv"
+    file.write_text(HEAD + "".join(f"{line}\n" for line in lines))
+    data = open_measurements(file, "nm")
+    good = sum(len(rows.row) for rows in data.batches())
+    assert data.n_rows == len(lines)
+    assert good + data.n_unreadable == data.n_rows
+    assert good >= lines.count(ROW.strip())
+    assert len(data.warnings()) == min(data.n_unreadable, 10)
+
+
+@pytest.mark.parametrize(
+    "odd", ['"GATE,ACTIVE,L1,3,15,-15,1,2,4.5,-6', " GATE , ACTIVE,L1,3, 15,-15,1,2, 4.5 ,-6"]
+)
+def test_what_stands_far_down_in_the_file_is_read_with_the_same_care(read, odd):
+    n = 3000
+    data, (rows,) = read(HEAD + ROW * n + odd + "\n" + ROW)
+    assert (data.n_rows, data.n_unreadable) == (n + 2, 0)
+    assert list(data.readings) == [("GATE", "ACTIVE")]
+    assert rows.overlay[n:].tolist() == [[4.5, -6]] * 2

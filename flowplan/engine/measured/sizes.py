@@ -22,7 +22,7 @@ from flowplan.engine.analysis import Engine
 from flowplan.engine.measured.planned import planned
 from flowplan.engine.measured.summary import Measured, MeasuredReading
 from flowplan.engine.sources import N_BASIS
-from flowplan.model.base import AXES, Axis, PerAxis
+from flowplan.model.base import AXES, WAFER, Axis, PerAxis
 from flowplan.model.edits import Readings, with_references
 from flowplan.model.flow import Flow
 from flowplan.model.marksites import MarkSites
@@ -158,6 +158,13 @@ def sizes_of(measured: Measured) -> Sizes:
     return Sizes(tuple(_found(engine, masks[r.mask], r, axis) for r, axis in direct), tuple(silent))
 
 
+def alignment_of(tool: Tool, reading: Reading) -> Size | MarkSites | None:
+    """Return the alignment that a flow quotes for a reading: its own, or the tool's."""
+    if reading.alignment is not None:
+        return reading.alignment
+    return tool.wafer_alignment if reading.mask == WAFER else tool.alignment
+
+
 def _reason(tools: Mapping[str, Tool], mask: Mask | None, reading: MeasuredReading, axis: Axis) -> str:
     """Return why a measured reading does not tell an alignment; empty when it does."""
     if mask is None:
@@ -167,7 +174,7 @@ def _reason(tools: Mapping[str, Tool], mask: Mask | None, reading: MeasuredReadi
         return f"{mask.id} does not read {reading.reference}"
     if len(read) > 1:
         return f"{mask.id} averages several references"
-    own = read[0].alignment or tools[mask.tool].alignment
+    own = alignment_of(tools[mask.tool], read[0])
     if isinstance(own, MarkSites):
         return f"the alignment of {mask.id} follows from its mark sites"
     if reading.tally.n < 2 or not math.isfinite(reading.axes[axis].sigma):
@@ -181,7 +188,7 @@ def _found(engine: Engine, mask: Mask, reading: MeasuredReading, axis: Axis) -> 
     rest = planned(engine, reading.mask, reading.reference, axis, moments)
     left = figures.sigma**2 - rest.spread
     random = convert(flow.sigma * float(np.sqrt(max(left, 0.0))), "nm", flow.unit)
-    own = mask.aligns_to.on(axis)[0].alignment or flow.tools[mask.tool].alignment
+    own = alignment_of(flow.tools[mask.tool], mask.aligns_to.on(axis)[0])
     varies = own.varies if isinstance(own, Size) else None
     # On the back x is reversed: a shift there acts with the other sign.
     turn = -1 if mask.side == "back" and axis == "x" else 1

@@ -11,7 +11,7 @@ from flowplan.engine.measured.nested import Split, mean_error, split_variance
 from flowplan.engine.measured.planned import SIGMAS, Planned, planned
 from flowplan.engine.measured.tally import Ledger, Outlier, Tally
 from flowplan.engine.sources import N_BASIS
-from flowplan.model.base import AXES, Axis
+from flowplan.model.base import AXES, WAFER, Axis
 from flowplan.model.flow import Flow
 
 
@@ -109,7 +109,7 @@ class Measured:
     def unknown(self) -> tuple[str, ...]:
         """Names in the data that are no layers of the flow."""
         named = (name for reading in self.readings for name in (reading.mask, reading.reference))
-        return tuple(dict.fromkeys(name for name in named if name not in self.flow.layers))
+        return tuple(dict.fromkeys(name for name in named if name not in (WAFER, *self.flow.layers)))
 
 
 def summarise(engine: Engine, ledger: Ledger, names: Sequence[tuple[str, str]]) -> Measured:
