@@ -6,7 +6,6 @@ fields of one wafer share what they share in the fab.
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 
@@ -39,19 +38,19 @@ class Layout:
 
 @dataclass(frozen=True, slots=True)
 class _Part:
-    """The scalars of some levels, with e by basis function and E as products of them."""
+    """The scalars of some levels, with D by basis function and edges as products of them."""
 
     draws: Draws
-    overlay: tuple[tuple[int, Product], ...]
+    pattern: tuple[tuple[int, Product], ...]
     edges: Product
 
     @classmethod
-    def of(cls, draws: Draws, n_rows: int) -> "_Part":
-        by_basis = [(b, draws.product(slice(b * n_rows, (b + 1) * n_rows))) for b in range(N_BASIS)]
+    def of(cls, draws: Draws, n_places: int) -> "_Part":
+        by_basis = [(b, draws.product(slice(b * n_places, (b + 1) * n_places))) for b in range(N_BASIS)]
         return cls(
             draws,
             tuple((b, product) for b, product in by_basis if len(product.columns)),
-            draws.product(slice(N_BASIS * n_rows, None)),
+            draws.product(slice(N_BASIS * n_places, None)),
         )
 
 
@@ -79,17 +78,16 @@ class FieldModel:
     ) -> None:
         self.layout = layout
         self._forms = forms
-        self._n_rows = len(forms.room)
-        stacked = np.concatenate([*forms.overlay, forms.edges])
+        stacked = np.concatenate([*forms.pattern, forms.edge])
         draws = draws_of(stacked, sources, sigma, bounds_vary=bounds_vary)
-        self._field = _Part.of(draws.only(["field"]), self._n_rows)
-        self._above = _Part.of(draws.only(["mask", "lot", "wafer"]), self._n_rows)
-        self._basis = sorted(
-            {0}
-            | {b for part in (self._field, self._above) for b, _ in part.overlay}
-            | set(np.flatnonzero(forms.offset.any(axis=1)).tolist())
-        )
+        n_places = len(forms.edge)
+        self._field = _Part.of(draws.only(["field"]), n_places)
+        self._above = _Part.of(draws.only(["mask", "lot", "wafer"]), n_places)
+        self._basis = sorted({0} | {b for part in (self._field, self._above) for b, _ in part.pattern})
         self._room = self._rooms()
+        self._offset = self._about_centre(
+            {b: part[:, None] for b, part in enumerate(forms.offset)}, layout.centres.T
+        )
 
     def _rooms(self) -> FloatArray:
         """Return room less bounds by corner, row and field; one corner stands for all where all are alike."""
@@ -120,10 +118,10 @@ class FieldModel:
         """
         n_fields, n_wafers = len(self.layout.centres), sets * _PER_SET
         drawn = self._draw_above(random, sets)
-        above = {b: product.of(drawn) for b, product in self._above.overlay}
+        above = {b: product.of(drawn) for b, product in self._above.pattern}
         edges = self._above.edges.of(drawn)
         per_wafer, per_field = np.zeros(n_wafers, dtype=np.int64), np.zeros(n_fields, dtype=np.int64)
-        size = block_of(N_BASIS * self._n_rows)
+        size = block_of(N_BASIS * len(self._forms.room))
         for start in range(0, n_wafers * n_fields, size):
             wafer, place = divmod(np.arange(start, min(start + size, n_wafers * n_fields)), n_fields)
             good = self._hold(self._field.draws.sample(random, len(wafer)), above, edges, wafer, place)
@@ -152,15 +150,21 @@ class FieldModel:
         place: IntArray,
     ) -> np.ndarray:
         """Return which fields hold, shape (n,)."""
-        own = {b: product.of(drawn) for b, product in self._field.overlay}
-        by_basis = {b: self._forms.offset[b][:, None] + np.zeros(len(wafer)) for b in self._basis}
+        forms = self._forms
+        own = {b: product.of(drawn) for b, product in self._field.pattern}
+        by_basis = {b: np.zeros((len(forms.edge), len(wafer))) for b in self._basis}
         for b, values in by_basis.items():
             if b in own:
                 values += own[b]
             if b in above:
                 values += above[b][:, wafer]
-        constant, slope_x, slope_y = self._about_centre(by_basis, self.layout.centres[place].T)
-        edges = self._field.edges.of(drawn) + edges_above[:, wafer]
+        constant, slope_x, slope_y = (
+            forms.rows_overlay(part) for part in self._about_centre(by_basis, self.layout.centres[place].T)
+        )
+        constant += self._offset[0][:, place]
+        slope_x += self._offset[1]
+        slope_y += self._offset[2]
+        edges = forms.rows_edges(self._field.edges.of(drawn) + edges_above[:, wafer])
         if len(self._room) == 1:
             worst = np.abs(constant) + np.abs(slope_x) + np.abs(slope_y)
             return np.asarray((self._room[0][:, place] + edges >= worst).all(axis=0))
@@ -170,9 +174,10 @@ class FieldModel:
             good &= (room[:, place] + edges >= worst).all(axis=0)
         return good
 
-    def _about_centre(self, by_basis: dict[int, FloatArray], centre: FloatArray) -> tuple[Any, Any, Any]:
-        """Return e at the field's centre and its rise from there to the right and the upper rim [nm]."""
-        constant, x, y, wafer_x, wafer_y = (by_basis.get(b, 0.0) for b in range(N_BASIS))
+    def _about_centre(self, by_basis: dict[int, FloatArray], centre: FloatArray) -> tuple[FloatArray, ...]:
+        """Return displacements at the fields' centres, and their rise to the right and upper rim [nm]."""
+        nothing = np.zeros_like(by_basis[0])
+        constant, x, y, wafer_x, wafer_y = (by_basis.get(b, nothing) for b in range(N_BASIS))
         return (
             constant + wafer_x * centre[0] + wafer_y * centre[1],
             (x + wafer_x) * self.layout.half[0],

@@ -19,7 +19,7 @@ from flowplan.engine.parts import Kernel
 from flowplan.engine.points import basis_at
 from flowplan.engine.residual import Residuals, Row, residuals
 from flowplan.engine.results import Entry
-from flowplan.engine.sources import N_BASIS, FloatArray
+from flowplan.engine.sources import N_BASIS, FloatArray, IntArray
 from flowplan.model.base import AXES, Axis
 
 _ORIGIN = (0.0, 0.0, 0.0, 0.0)
@@ -132,12 +132,19 @@ def _place(entry: Entry) -> tuple[float, float, float, float]:
 class FieldForms:
     """The judged rows as functions of position.
 
+    Layers are kept rather than rows: they are fewer, and a row is the difference of two. A place is a
+    layer on one axis.
+
     Attributes
     ----------
-    overlay : ndarray, shape (n_basis, n_rows, n_sources)
-        e by basis function of position and source, at the quoted sizes [nm, or nm per mm].
-    edges : ndarray, shape (n_rows, n_sources)
-        E by source [nm].
+    pattern : ndarray, shape (n_basis, n_places, n_sources)
+        D by basis function of position and source, at the quoted sizes [nm, or nm per mm].
+    edge : ndarray, shape (n_places, n_sources)
+        Edge errors by source [nm].
+    first, second : ndarray of int, shape (n_rows,)
+        The places of each row's layers.
+    signs : ndarray, shape (n_rows, 2)
+        Signs of their edges in E.
     offset : ndarray, shape (n_basis, n_rows)
         The known part of e by basis function [nm, or nm per mm].
     room : ndarray, shape (n_rows,)
@@ -147,35 +154,63 @@ class FieldForms:
         point, shape (n_rows, n_points) [nm].
     """
 
-    overlay: FloatArray
-    edges: FloatArray
+    pattern: FloatArray
+    edge: FloatArray
+    first: IntArray
+    second: IntArray
+    signs: FloatArray
     offset: FloatArray
     room: FloatArray
     bound: Callable[[FloatArray], FloatArray]
+
+    def rows_overlay(self, places: FloatArray) -> FloatArray:
+        """Return what rows have of what places have, as e has it of D."""
+        return np.asarray(places[self.second] - places[self.first])
+
+    def rows_edges(self, places: FloatArray) -> FloatArray:
+        """Return what rows have of what places have, as E has it of the edges."""
+        return np.asarray(self.signs[:, :1] * places[self.first] + self.signs[:, 1:] * places[self.second])
 
 
 def field_forms(engine: Engine, entries: Sequence[Entry], *, bounds_vary: bool) -> FieldForms:
     """Return the judged rows as functions of position; arguments as for `pair_forms`."""
     parts = axis_rows(engine, entries)
-    overlay = np.concatenate(
-        [np.stack([_one_basis(rows, b) for b in range(N_BASIS)]) for rows in parts], axis=1
-    )
-    offset = np.concatenate([r.kernel.offset_form(r.residuals.overlay) for r in parts]).T
-    room = [_field_room(r) for r in parts]
+    placement, n_layers = engine.placement, len(engine.placement.index)
+    start = {axis: i * n_layers for i, axis in enumerate(AXES)}
+    pattern = [_by_basis(rows, placement.pattern[axis]) for rows, axis in zip(parts, AXES, strict=True)]
+    edge = [
+        rows.by_source(rows.kernel.by_source(placement.edge[axis]))
+        for rows, axis in zip(parts, AXES, strict=True)
+    ]
+    layers = np.array([[start[e.axis] + placement.index[name] for name in e.layers] for e in entries])
 
     def bound(basis: FloatArray) -> FloatArray:
         if bounds_vary:
             return np.zeros((len(entries), basis.shape[1]))
-        return np.concatenate(
-            [
-                r.kernel.absolute_sum(r.residuals.overlay + r.residuals.edges, r.kernel.bound, basis)
-                for r in parts
-            ]
-        )
+        both = (r.residuals.overlay + r.residuals.edges for r in parts)
+        sums = (r.kernel.absolute_sum(b, r.kernel.bound, basis) for r, b in zip(parts, both, strict=True))
+        return np.concatenate(list(sums))
 
     return FieldForms(
-        overlay, np.concatenate([r.edges() for r in parts]), offset, np.concatenate(room), bound
+        pattern=np.concatenate(pattern, axis=1),
+        edge=np.concatenate(edge),
+        first=layers[:, 0],
+        second=layers[:, 1],
+        signs=np.array([e.pair.edge_signs for e in entries], dtype=np.float64),
+        offset=np.concatenate([r.kernel.offset_form(r.residuals.overlay) for r in parts]).T,
+        room=np.concatenate([_field_room(r) for r in parts]),
+        bound=bound,
     )
+
+
+def _by_basis(rows: AxisRows, amounts: FloatArray) -> FloatArray:
+    """Return amounts over modes by basis function and source."""
+    found = []
+    for index in range(N_BASIS):
+        chosen = np.zeros((N_BASIS, len(amounts)))
+        chosen[index] = 1.0
+        found.append(rows.by_source(rows.kernel.at_points(amounts, chosen)))
+    return np.stack(found)
 
 
 def _field_room(rows: AxisRows) -> FloatArray:
@@ -183,9 +218,3 @@ def _field_room(rows: AxisRows) -> FloatArray:
     res = rows.residuals
     dust = DUST * (np.abs(res.drawn) + np.abs(res.keep))
     return np.asarray(res.drawn - res.keep + res.edges @ rows.kernel.offset + dust)
-
-
-def _one_basis(rows: AxisRows, index: int) -> FloatArray:
-    chosen = np.zeros((N_BASIS, len(rows.entries)))
-    chosen[index] = 1.0
-    return rows.overlay_at(chosen)
