@@ -108,7 +108,7 @@ def _spread(readings: Sequence[MeasuredReading], figures: Figures) -> TableText:
                     ratio_text(of_axis),
                 )
             )
-    names = ("reading", "", "rows", "mean", "3 sigma", "|mean|+3s", "planned", "of plan")
+    names = ("reading", "axis", "rows", "mean", "3 sigma", "|mean|+3s", "planned", "of plan")
     legend = (
         "mask minus reference; planned: |offset| + bound + 3 sigma of the flow at the places measured;",
         "of plan: measured over planned",
@@ -191,7 +191,7 @@ def _variances(readings: Sequence[MeasuredReading], figures: Figures) -> TableTe
         f"3 sigma of each part in {figures.unit}, the fit taken off;",
         f"{_NONE}: cannot be told from the one before",
     )
-    return TableText("Variance by level", _headings(("reading", "", *LEVELS), 2), tuple(rows), legend)
+    return TableText("Variance by level", _headings(("reading", "axis", *LEVELS), 2), tuple(rows), legend)
 
 
 def part_text(variance: float | None, figures: Figures) -> str:
@@ -200,7 +200,7 @@ def part_text(variance: float | None, figures: Figures) -> str:
 
 
 def _alignments(flow: Flow, found: Sequence[Found], figures: Figures) -> TableText:
-    names = ("reading", "", "planned", "measured", "±", "offset", "")
+    names = ("reading", "axis", "planned", "measured", "±", "offset", "note")
     pairs = [None, *((one.mask, one.reference) for one in found)]
     rows = [
         (

@@ -99,7 +99,7 @@ def test_table_fits_80_columns_and_tells_what_is_wrong_with_the_data(run, shaped
 def test_markdown(run, shaped):
     text = run("measured", *shaped, "--format", "markdown").stdout
     assert text.startswith("# Estuary two masks, revision A: measured overlay\n")
-    assert "| reading |  | rows | mean | 3 sigma |" in text
+    assert "| reading | axis | rows | mean | 3 sigma |" in text
 
 
 def test_outliers_count_when_kept(run, shaped):

@@ -107,22 +107,25 @@ class Sizes:
             What the data are called.
         """
         unit = measured.flow.unit
+        readings = {(reading.mask, reading.reference): reading for reading in measured.readings}
+        by_reading: dict[tuple[str, str], list[Found]] = {}
+        for one in self.found:
+            if not one.exceeded:
+                by_reading.setdefault((one.mask, one.reference), []).append(one)
         notes: dict[str, list[str]] = {}
-        for reading in measured.readings:
-            axes = [
-                one.axis
-                for one in self.found
-                if (one.mask, one.reference) == (reading.mask, reading.reference) and not one.exceeded
-            ]
-            if axes:
-                tally = reading.tally
-                figures = (convert(reading.axes[axis].three_sigma, "nm", unit) for axis in axes)
-                spread = ", ".join(f"{axis} {v:.4g}" for axis, v in zip(axes, figures, strict=True))
-                wafers = f"{tally.n_wafers} wafers of {tally.n_lots} lots"
-                notes.setdefault(reading.mask, []).append(
-                    f"alignment to {reading.reference} along {' and '.join(axes)} from {data}, "
-                    f"{tally.n} rows on {wafers}, overlay 3 sigma {spread} {unit}"
-                )
+        for (mask, reference), both in by_reading.items():
+            reading = readings[mask, reference]
+            tally = reading.tally
+            axes = " and ".join(one.axis for one in both)
+            spread = ", ".join(
+                f"{one.axis} {convert(reading.axes[one.axis].three_sigma, 'nm', unit):.4g}" for one in both
+            )
+            doubt = ", ".join(f"{one.axis} {one.error:.2g}" for one in both if one.error)
+            notes.setdefault(mask, []).append(
+                f"alignment to {reference} along {axes} from {data}, {tally.n} rows on {tally.n_wafers} wafers "
+                f"of {tally.n_lots} lots, overlay 3 sigma {spread} {unit}"
+                + (f", standard error of the alignment {doubt} {unit}" if doubt else "")
+            )
         return {mask: "; ".join(parts) for mask, parts in notes.items()}
 
 
