@@ -122,8 +122,8 @@ class Sizes:
             )
             doubt = ", ".join(f"{one.axis} {one.error:.2g}" for one in both if one.error)
             notes.setdefault(mask, []).append(
-                f"alignment to {reference} along {axes} from {data}, {tally.n} rows on {tally.n_wafers} wafers "
-                f"of {tally.n_lots} lots, overlay 3 sigma {spread} {unit}"
+                f"alignment to {reference} along {axes} from {data}, {tally.n} rows on {tally.n_wafers} "
+                f"wafers of {tally.n_lots} lots, overlay 3 sigma {spread} {unit}"
                 + (f", standard error of the alignment {doubt} {unit}" if doubt else "")
             )
         return {mask: "; ".join(parts) for mask, parts in notes.items()}
