@@ -17,6 +17,7 @@ LARGEST_ERROR = 0.10
 def check(rare, exact):
     assert max(ROW_SAMPLES, UNION_SAMPLES) <= MOST_SAMPLES
     assert 0 < rare.relative_error <= LARGEST_ERROR
+    assert rare.fail <= 1
     assert rare.fail == pytest.approx(exact, rel=Z_SURE * rare.relative_error)
 
 
@@ -90,6 +91,13 @@ def test_edges_that_close_both_sides_at_once_count_once(drawn):
     one = stats.norm.sf(drawn / math.sqrt(4.16))
     both = stats.multivariate_normal(cov=cov).cdf([-drawn, -drawn])
     check(found.pairs[0].rare, 1 - neither if drawn < 8 else 2 * one - both)
+
+
+def test_an_estimate_is_never_above_one():
+    """Two pairs of which one or the other nearly always fails: weights scatter about 1."""
+    masks = [mask("A"), *(mask(f"B{i}", "A", terms={"t": {"random": 1.0, "bound": 2.0}}) for i in range(4))]
+    pairs = [overlay_pair("A", f"B{i}", limit=0.2, axes="x") for i in range(4)]
+    check(simulated(bare_flow(masks, pairs), 100).rare, 1.0)
 
 
 def star(n, limit, **tool):

@@ -201,6 +201,5 @@ def _estimate(first: float, second: float, n: int) -> Rare:
     if mean == 0:
         return Rare(0.0, None)
     variance = max(0.0, second / n - mean**2) / n
-    return Rare(
-        mean, max(1 / n, variance**0.5 / mean)
-    )  # draws that all fail leave room for one that does not
+    error = max(1 / n, variance**0.5 / mean)  # draws that all fail leave room for one that does not
+    return Rare(min(1.0, mean), error)
