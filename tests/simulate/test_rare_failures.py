@@ -74,10 +74,20 @@ def test_what_always_happens():
 
 
 def test_what_nearly_always_happens_is_not_called_certain():
-    """A room of -4.5 sigma: all draws fail, yet the fraction is not exactly 1."""
-    found = simulated(one_pair({"a": {"random": 1.0, "bound": 4.5}}, 0.0), 100)
-    check(found.pairs[0].rare, 1.0)
-    check(found.rare, 1.0)
+    """Edges of one sigma that lack 4.5 sigma of room: all draws fail, yet the fraction is not 1."""
+    masks = [mask("A"), mask("B", "A", cd=2.0)]
+    pair = {
+        "name": "p",
+        "rule": "enclosure",
+        "inner": "A",
+        "outer": "B",
+        "drawn": 1.0,
+        "keep": 5.5,
+        "axes": "x",
+    }
+    found = simulated(bare_flow(masks, [pair]), 100)
+    check(found.pairs[0].rare, stats.norm.cdf(4.5))
+    check(found.rare, stats.norm.cdf(4.5))
 
 
 @pytest.mark.parametrize("drawn", [2.0, 6.0, 12.0])
@@ -94,7 +104,7 @@ def test_edges_that_close_both_sides_at_once_count_once(drawn):
 
 
 def test_an_estimate_is_never_above_one():
-    """Two pairs of which one or the other nearly always fails: weights scatter about 1."""
+    """Four pairs without room, so that both sides of each always fail: the weights scatter about 1."""
     masks = [mask("A"), *(mask(f"B{i}", "A", terms={"t": {"random": 1.0, "bound": 2.0}}) for i in range(4))]
     pairs = [overlay_pair("A", f"B{i}", limit=0.2, axes="x") for i in range(4)]
     check(simulated(bare_flow(masks, pairs), 100).rare, 1.0)
