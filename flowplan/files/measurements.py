@@ -116,6 +116,7 @@ class Measurements:
                 rows = self._rows(frame)
                 del frame
                 yield rows
+                del rows  # so that two passes are never held together
 
     def warnings(self) -> tuple[Diagnostic, ...]:
         """Return the first unreadable rows, each with its place and reason."""

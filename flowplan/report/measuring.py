@@ -102,6 +102,7 @@ def take_measurements(
     ledger = Ledger(asked.limit)
     for rows in data.batches(progress):
         ledger.add(Batch(rows.reading, rows.lot, rows.wafer, rows.positions, rows.overlay, rows.row))
+        del rows  # so that two passes are never held together
     if data.n_unreadable == data.n_rows:
         none = Diagnostic(
             "FP703", "the file has no row that can be read", "is this the right file?", span=Span(file, 1, 1)

@@ -1,28 +1,15 @@
 """What measured data cost: a small multiple of reading the file, in memory that does not grow with it."""
 
 import resource
-import subprocess
-import sys
+import tracemalloc
 from pathlib import Path
 
 import numpy as np
 import polars as pl
-import pytest
 
-WORK = """
-import resource, sys
 from flowplan.engine.measured.batch import Batch
 from flowplan.engine.measured.tally import Ledger
 from flowplan.files.measurements import open_measurements
-data = open_measurements(sys.argv[1], "nm", rows_at_once=int(sys.argv[2]))
-ledger = Ledger()
-n = 0
-for rows in data.batches():
-    ledger.add(Batch(rows.reading, rows.lot, rows.wafer, rows.positions, rows.overlay, rows.row))
-    n += len(rows.row)
-    del rows
-print(n, resource.getrusage(resource.RUSAGE_SELF).ru_maxrss // 1024)
-"""
 
 
 def write(file: Path, n: int) -> str:
@@ -52,10 +39,6 @@ def cpu() -> float:
 
 
 def test_the_fit_costs_a_few_times_what_reading_the_file_costs(tmp_path):
-    from flowplan.engine.measured.batch import Batch
-    from flowplan.engine.measured.tally import Ledger
-    from flowplan.files.measurements import open_measurements
-
     file = write(tmp_path / "data.csv", 400_000)
     words = dict.fromkeys(("mask", "reference", "lot", "wafer"), pl.String)
 
@@ -78,16 +61,25 @@ def test_the_fit_costs_a_few_times_what_reading_the_file_costs(tmp_path):
     assert costs[1] / costs[0] < 8
 
 
-@pytest.mark.slow
+def held(file: str, at_once: int) -> tuple[int, int]:
+    """Return the rows of the largest batch, and the most memory that numpy held [bytes]."""
+    ledger, largest = Ledger(), 0
+    tracemalloc.start()
+    try:
+        for rows in open_measurements(file, "nm", rows_at_once=at_once).batches():
+            ledger.add(Batch(rows.reading, rows.lot, rows.wafer, rows.positions, rows.overlay, rows.row))
+            largest = max(largest, len(rows.row))
+            del rows
+        return largest, tracemalloc.get_traced_memory()[1]
+    finally:
+        tracemalloc.stop()
+
+
 def test_memory_follows_the_rows_held_together_and_not_the_file(tmp_path):
-    n = 2_000_000
-    file = write(tmp_path / "data.csv", n)
-    peaks = []
-    for at_once in (200_000, n):
-        command = [sys.executable, "-c", WORK, file, str(at_once)]
-        done = subprocess.run(command, capture_output=True, text=True, check=True)
-        rows, peak = map(int, done.stdout.split())
-        assert rows == n
-        peaks.append(peak)
-    # What polars holds in flight while it reads is the same for both.
-    assert peaks[0] < 0.75 * peaks[1]
+    small, large = (write(tmp_path / f"{n}.csv", n) for n in (108_000, 432_000))
+    (rows_small, bytes_small), (rows_large, bytes_large) = (held(file, 54_000) for file in (small, large))
+    # Wafers fall into batches by their hash: 100 of them on average, of 540 rows each.
+    assert max(rows_small, rows_large) < 1.5 * 54_000
+    assert bytes_large / rows_large < 1.3 * bytes_small / rows_small
+    # A part is the same however few rows are held: the rows from which the shared pattern is found.
+    assert held(large, 10**9)[1] > 2 * bytes_large
