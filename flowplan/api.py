@@ -7,7 +7,7 @@ from flowplan.engine import analysis
 from flowplan.engine.results import Entry, Verdict
 from flowplan.files.reader import load, load_with_warnings, parse
 from flowplan.model.flow import Flow
-from flowplan.report.records import entry_record, margins_document
+from flowplan.report.records import check_record, margins_document
 
 if TYPE_CHECKING:
     from flowplan.engine.simulate import Simulation
@@ -77,7 +77,7 @@ class Analysis:
 
     def to_records(self) -> list[dict[str, Any]]:
         """Return the entries as plain dictionaries, lengths in the file's unit."""
-        return [entry_record(entry, self.flow.unit) for entry in self.entries]
+        return [check_record(check, self.flow.unit) for check in self.result.checks]
 
     def to_document(self) -> dict[str, Any]:
         """Return what ``flowplan margins --format json`` prints."""

@@ -8,6 +8,7 @@ from itertools import combinations
 import numpy as np
 
 from flowplan.engine.graph import AlignmentGraph
+from flowplan.engine.landing import LandingEntry, LandingView, landing_entries
 from flowplan.engine.margin import AxisView, entries_of, margins_over_sites
 from flowplan.engine.parts import Kernel
 from flowplan.engine.placement import Placement, place
@@ -17,6 +18,7 @@ from flowplan.engine.results import VERDICTS, Entry, Verdict
 from flowplan.engine.sources import FloatArray
 from flowplan.model.base import AXES, Axis
 from flowplan.model.flow import Flow
+from flowplan.model.landing import Landing
 from flowplan.model.pairs import AnyPair, Overlay
 
 Progress = Callable[[int, int], None]
@@ -85,6 +87,14 @@ class Engine:
                     progress(len(found), len(rows))
         return tuple(found[i] for i in range(len(rows)))
 
+    def landings(self, pairs: Iterable[AnyPair] | None = None) -> tuple[LandingEntry, ...]:
+        """Return the landing pairs among some pairs, by default the flow's own, in their order."""
+        view = LandingView(self.flow, self.placement, self._kernels, self.sites, self.graph)
+        wanted = self.flow.pairs if pairs is None else pairs
+        return tuple(
+            entry for pair in wanted if isinstance(pair, Landing) for entry in landing_entries(view, pair)
+        )
+
     def margin_map(self, entries: Sequence[Entry]) -> FloatArray:
         """Return the margins of entries of one axis at every site.
 
@@ -131,11 +141,14 @@ class Result:
     engine : Engine
         The placed flow, for further questions.
     entries : tuple of Entry
-        In file order.
+        What is judged along an axis, in file order.
+    landings : tuple of LandingEntry
+        What is judged by its landed area, in file order.
     """
 
     engine: Engine
     entries: tuple[Entry, ...]
+    landings: tuple[LandingEntry, ...] = ()
 
     @property
     def flow(self) -> Flow:
@@ -143,9 +156,17 @@ class Result:
         return self.engine.flow
 
     @property
+    def checks(self) -> tuple[Entry | LandingEntry, ...]:
+        """Everything that is judged, of both kinds, in file order."""
+        if not self.landings:
+            return self.entries
+        place = {pair.name: i for i, pair in enumerate(self.flow.pairs)}
+        return tuple(sorted((*self.entries, *self.landings), key=lambda e: place[e.pair.name]))
+
+    @property
     def counts(self) -> dict[Verdict, int]:
         """How many entries got each verdict."""
-        counted = Counter(e.verdict for e in self.entries)
+        counted = Counter(e.verdict for e in self.checks)
         return {verdict: counted[verdict] for verdict in VERDICTS}
 
     @property
@@ -177,4 +198,5 @@ def analyse(flow: Flow, pairs: Iterable[AnyPair] | None = None, progress: Progre
         The entries in file order.
     """
     engine = Engine.of(flow)
-    return Result(engine, engine.entries(pairs, progress))
+    wanted = flow.pairs if pairs is None else tuple(pairs)
+    return Result(engine, engine.entries(wanted, progress), engine.landings(wanted))

@@ -19,7 +19,8 @@ from flowplan.engine.placement import Placement
 from flowplan.engine.sources import FloatArray
 from flowplan.model.base import Axis
 from flowplan.model.flow import Flow
-from flowplan.model.pairs import AnyPair, Overlay
+from flowplan.model.landing import Landing
+from flowplan.model.pairs import AnyPair, AxisPair, Overlay
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,7 +29,7 @@ class Row:
 
     Attributes
     ----------
-    pair : AnyPair
+    pair : AxisPair
         The pair in the flow.
     first, second : str
         The two layers, split layers already expanded.
@@ -36,7 +37,7 @@ class Row:
         The axis.
     """
 
-    pair: AnyPair
+    pair: AxisPair
     first: str
     second: str
     axis: Axis
@@ -64,10 +65,11 @@ class Residuals:
 
 
 def rows_of(flow: Flow, pairs: Iterable[AnyPair]) -> tuple[Row, ...]:
-    """Return one row per pair, layers of a split layer and axis, in file order."""
+    """Return one row per pair, layers of a split layer and axis, in file order; none for a landing."""
     return tuple(
         Row(pair, first, second, axis)
         for pair in pairs
+        if not isinstance(pair, Landing)
         for first in flow.expand(pair.layers[0])
         for second in flow.expand(pair.layers[1])
         for axis in pair.judged_axes

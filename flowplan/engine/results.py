@@ -10,7 +10,7 @@ from flowplan.engine.points import Point
 from flowplan.engine.sources import FloatArray, IntArray, Source
 from flowplan.model.base import Axis
 from flowplan.model.flow import Basis
-from flowplan.model.pairs import AnyPair
+from flowplan.model.pairs import AxisPair
 
 Verdict = Literal["pass", "tight", "fail", "unjudged"]
 VERDICTS: tuple[Verdict, ...] = ("pass", "tight", "fail", "unjudged")
@@ -100,7 +100,7 @@ class Entry:
 
     Attributes
     ----------
-    pair : AnyPair
+    pair : AxisPair
         The pair in the flow.
     layers : tuple of str
         The two layers, split layers expanded.
@@ -133,7 +133,7 @@ class Entry:
         The residual's sources.
     """
 
-    pair: AnyPair
+    pair: AxisPair
     layers: tuple[str, str]
     axis: Axis
     chain: Chain

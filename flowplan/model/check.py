@@ -9,6 +9,7 @@ from collections.abc import Callable, Iterator
 
 from flowplan.errors import Diagnostic, Path, nearest
 from flowplan.model.base import AXES, WAFER
+from flowplan.model.checklanding import resistance_limits_leave_room
 from flowplan.model.checkmarks import marks_fix_their_model, marks_have_room
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import MOST_FIELDS, too_many_fields, whole_fields
@@ -152,6 +153,8 @@ _LAYER_KEYS = {"enclosure": ("outer", "inner"), "extension": ("of", "past")}
 def pair_layer_paths(flow: Flow, index: int) -> tuple[Path, Path]:
     """Return the paths of the two layers of a pair."""
     pair = flow.pairs[index]
+    if pair.rule == "landing":
+        return ("pairs", index, "pad", "layer"), ("pairs", index, "contact", "layer")
     if pair.rule in _LAYER_KEYS:
         first, second = _LAYER_KEYS[pair.rule]
         return ("pairs", index, first), ("pairs", index, second)
@@ -268,6 +271,7 @@ RULES: tuple[Rule, ...] = (
     _features_follow_layers,
     _split_layers_exist,
     _pairs_name_layers,
+    resistance_limits_leave_room,
     _sources_are_one_thing,
     _sizes_are_given,
     _geometry_is_there,

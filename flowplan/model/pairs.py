@@ -1,4 +1,4 @@
-"""The five rules by which two layers must fit each other."""
+"""The rules by which two layers must fit each other; five along an axis, and one of areas."""
 
 from typing import Annotated, Any, Literal
 
@@ -15,6 +15,7 @@ from flowplan.model.base import (
     PerAxis,
     refuse,
 )
+from flowplan.model.landing import Landing
 from flowplan.units import Quantity
 
 ZERO = PerAxis(x=Quantity(0.0), y=Quantity(0.0))
@@ -121,8 +122,10 @@ class Overlay(_Between):
         return 0, 0
 
 
-AnyPair = Enclosure | Extension | Spacing | Overlap | Overlay
-RULES = ("enclosure", "extension", "spacing", "overlap", "overlay")
+#: The rules that are judged along each axis on its own.
+AxisPair = Enclosure | Extension | Spacing | Overlap | Overlay
+AnyPair = AxisPair | Landing
+RULES = ("enclosure", "extension", "spacing", "overlap", "overlay", "landing")
 
 _WORDS = {
     "enclosure": "{1} inside {0}",
@@ -130,6 +133,7 @@ _WORDS = {
     "spacing": "{0} clear of {1}",
     "overlap": "{0} over {1}",
     "overlay": "{1} on {0}",
+    "landing": "{1} landing on {0}",
 }
 
 

@@ -133,7 +133,7 @@ def _stand_in(data: object) -> None:
         if isinstance(tools, dict) and tools:
             mask.setdefault("tool", next(iter(tools)))
     for pair in _entries(data.get("pairs")):
-        if pair.get("rule") != "overlay":
+        if pair.get("rule") not in ("overlay", "landing"):
             pair.setdefault("drawn", 0)
 
 

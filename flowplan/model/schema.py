@@ -15,7 +15,7 @@ _CHANGED = {
     "tools": ("Tool",),
     "masks": ("Mask",),
     "self_aligned": ("SelfAligned",),
-    "pairs": ("Enclosure", "Extension", "Spacing", "Overlap", "Overlay"),
+    "pairs": ("Enclosure", "Extension", "Spacing", "Overlap", "Overlay", "Landing"),
 }
 
 

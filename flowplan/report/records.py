@@ -4,6 +4,7 @@ import math
 from typing import Any
 
 from flowplan.engine.analysis import Result
+from flowplan.engine.landing import QUANTILES, LandingEntry
 from flowplan.engine.points import Point
 from flowplan.engine.results import ByBasis, Entry, Parts, SourceRow
 from flowplan.model.flow import BASES
@@ -25,15 +26,13 @@ def finite(value: float | None) -> float | None:
     return None if value is None or not math.isfinite(value) else significant(value)
 
 
-def margins_document(result: Result, entries: tuple[Entry, ...] | None = None) -> Record:
+def margins_document(result: Result) -> Record:
     """Return the whole answer as one JSON-ready document.
 
     Parameters
     ----------
     result : Result
         An analysis.
-    entries : tuple of Entry, optional
-        Only these entries; the counts are theirs.
 
     Returns
     -------
@@ -41,7 +40,6 @@ def margins_document(result: Result, entries: tuple[Entry, ...] | None = None) -
         Keys as in the README, lengths in the file's unit, null for infinite values.
     """
     flow = result.flow
-    shown = result if entries is None else Result(result.engine, entries)
     return {
         "flow": flow.flow,
         "revision": flow.revision or None,
@@ -49,8 +47,8 @@ def margins_document(result: Result, entries: tuple[Entry, ...] | None = None) -
         "basis": flow.basis,
         "confidence": flow.confidence,
         "variant": flow.variant,
-        "counts": dict(shown.counts),
-        "margins": [entry_record(entry, flow.unit) for entry in shown.entries],
+        "counts": dict(result.counts),
+        "margins": [check_record(check, flow.unit) for check in result.checks],
     }
 
 
@@ -77,6 +75,56 @@ def entry_record(entry: Entry, unit: str) -> Record:
         "point": point_record(entry.point),
         "chain_rss": in_unit(entry.chain_rss, unit),
         "sources": [source_record(row, unit) for row in entry.sources],
+    }
+
+
+def check_record(check: Entry | LandingEntry, unit: str) -> Record:
+    """Return what is judged as a JSON-ready record, of either kind."""
+    return landing_record(check) if isinstance(check, LandingEntry) else entry_record(check, unit)
+
+
+#: What a landed area does not have: it is no sum of errors along an axis.
+_OF_AN_AXIS = (
+    "drawn", "keep", "nominal", "offset", "bound", "random", "overlay", "need", "margin", "cpk", "chain_rss",
+)  # fmt: skip
+
+
+def landing_record(entry: LandingEntry) -> Record:
+    """Return a landing as a JSON-ready record: areas as shares of the drawn one, resistances in ohm."""
+    chain, fails = entry.chain, entry.fail_probability
+    return {
+        "pair": entry.pair.name,
+        "rule": entry.pair.rule,
+        "layers": list(entry.layers),
+        "axis": entry.axis,
+        "chain": None if chain is None else list(chain.layers),
+        "through": None if chain is None else chain.through,
+        **dict.fromkeys(_OF_AN_AXIS),
+        "verdict": entry.verdict,
+        "fail_ppm": None if fails is None else finite(fails * 1e6),
+        "allowed_ppm": finite(entry.pair.allowed_ppm),
+        "point": point_record(entry.point),
+        "sources": [],
+        "landing": {
+            "nominal_area": finite(entry.nominal_area),
+            "mean_area": finite(entry.mean_area),
+            "area_quantiles": dict(zip(QUANTILES, map(finite, entry.area_quantiles), strict=True)),
+            "p_below_least": finite(entry.below_least),
+            "p_open": finite(entry.open),
+            "resistance": _resistances(entry),
+        },
+    }
+
+
+def _resistances(entry: LandingEntry) -> Record | None:
+    found = entry.resistance
+    if found is None:
+        return None
+    return {
+        "nominal": finite(found.nominal),
+        "median": finite(found.median),
+        "q99": finite(found.q99),
+        "p_above_limit": finite(found.above_limit),
     }
 
 
