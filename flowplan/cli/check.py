@@ -31,7 +31,8 @@ def check(name: str, variant: str | None, *, strict: bool, as_json: bool) -> Non
         _show_summary(opened, result)
     if strict and result.counts["fail"]:
         if not as_json:
-            tell(f"flowplan: {result.counts['fail']} of {len(result.entries)} margins fail")
+            noun = "checks" if result.landings else "margins"
+            tell(f"flowplan: {result.counts['fail']} of {len(result.checks)} {noun} fail")
         raise typer.Exit(Status.FAILS)
 
 
@@ -58,7 +59,7 @@ def _show_summary(opened: Opened, result: Result) -> None:
     used = len({mask.tool for mask in flow.masks})
     rows = [
         ("masks", f"{len(flow.masks)} on {_count(used, 'tool')}" + (f", {features}" if features else "")),
-        ("pairs", f"{len(flow.pairs)}, judged as {_count(len(result.entries), 'margin')}"),
+        ("pairs", f"{len(flow.pairs)}, judged as {_judged(result)}"),
         ("verdicts", f"{verdict_line(result)} ({flow.basis} basis, {flow.confidence:g} sigma)"),
         ("worst", worst_line(result)),
     ]
@@ -66,6 +67,11 @@ def _show_summary(opened: Opened, result: Result) -> None:
     emit(folded(f"{printable(flow.heading)}: sound" + (f", with {found}" if found else ""), 2))
     for label, value in rows:
         emit(folded(f"  {label:<9} {printable(value)}", 12))
+
+
+def _judged(result: Result) -> str:
+    landings = len(result.landings)
+    return _count(len(result.entries), "margin") + (f" and {_count(landings, 'landing')}" if landings else "")
 
 
 def _count(number: int, noun: str) -> str:

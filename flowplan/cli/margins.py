@@ -2,7 +2,7 @@
 
 import csv
 import io
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -15,10 +15,12 @@ from flowplan.cli.status import Status
 from flowplan.cli.streams import emit, emit_json, folded, printable
 from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
 from flowplan.engine.analysis import Result, analyse, every_pair
+from flowplan.engine.landing import LandingEntry
 from flowplan.engine.results import Entry, Verdict
 from flowplan.errors import Diagnostic, UsageError
 from flowplan.model.flow import BASES, Basis
-from flowplan.report.records import entry_record, margins_document
+from flowplan.report.landing import LANDING_HEADS, landing_cells
+from flowplan.report.records import check_record, margins_document
 from flowplan.report.textfigures import Figures
 
 
@@ -48,13 +50,23 @@ def margins(name: str, variant: str | None, choice: Choice) -> None:
         member for layer in choice.layers for member in flow.expand(known_layer(flow, layer, split=True))
     }
     result = analyse(flow, every_pair(flow) if choice.every_pair else None)
-    of_layers = tuple(e for e in result.entries if not wanted or wanted & set(e.layers))
-    shown = tuple(e for e in of_layers if not choice.verdicts or e.verdict in choice.verdicts)
+    of_layers = _only(result, lambda e: not wanted or bool(wanted & set(e.layers)))
+    shown = _only(of_layers, lambda e: not choice.verdicts or e.verdict in choice.verdicts)
     if choice.order is Order.MARGIN:
-        shown = tuple(sorted(shown, key=lambda e: _room(result, e)))
-    _PRINTERS[choice.form](Result(result.engine, shown))
-    if choice.strict and any(e.verdict == "fail" for e in of_layers):
+        by_margin = tuple(sorted(shown.entries, key=lambda e: _room(result, e)))
+        shown = Result(result.engine, by_margin, shown.landings)
+    _PRINTERS[choice.form](shown)
+    if choice.strict and of_layers.counts["fail"]:
         raise typer.Exit(Status.FAILS)
+
+
+def _only(result: Result, wanted: Callable[[Entry | LandingEntry], bool]) -> Result:
+    """Return the result with only some of what is judged."""
+    return Result(
+        result.engine,
+        tuple(e for e in result.entries if wanted(e)),
+        tuple(e for e in result.landings if wanted(e)),
+    )
 
 
 def _room(result: Result, entry: Entry) -> float:
@@ -82,6 +94,12 @@ def _table(result: Result) -> tuple[tuple[Column, ...], list[list[str]]]:
     return (*_LEADING, *(_JUDGED if judged else _OVERLAY)), rows
 
 
+def _landings(result: Result) -> tuple[tuple[Column, ...], list[list[str]]]:
+    """Return columns and cells of the landed areas."""
+    columns = (Column("pair"), *(Column(head, "right") for head in LANDING_HEADS), Column("verdict"))
+    return columns, [[e.pair.name, *landing_cells(e), e.verdict] for e in result.landings]
+
+
 def _taken(entry: Entry, basis: Basis) -> float:
     """Return what the errors take; without a limit the known offset belongs to it."""
     return entry.need.on(basis) + (abs(entry.overlay.offset) if entry.margin is None else 0.0)
@@ -98,12 +116,16 @@ def _show(result: Result) -> None:
     show_note(flow.heading, strong=True)
     show_note(f"lengths in {flow.unit}, {flow.basis} basis, {flow.confidence:g} sigma")
     emit("")
-    if not result.entries:
+    if not result.checks:
         emit("no pair fits what was asked for" if flow.pairs else "the flow has no pairs")
         return
-    columns, rows = _table(result)
-    show_table(columns, rows)
-    emit("")
+    if result.entries:
+        show_table(*_table(result))
+        emit("")
+    if result.landings:
+        show_note("landed area of contacts, shares of the drawn one")
+        show_table(*_landings(result))
+        emit("")
     emit(verdict_line(result))
     emit(folded(f"worst: {printable(worst_line(result))}", 7))
     if any(e.chain.one_of_several for e in result.entries):
@@ -117,7 +139,10 @@ def _markdown(result: Result) -> None:
         Column(f"{c.name} [{unit}]", c.align) if c.align == "right" else Column(c.name, c.align)
         for c in columns
     ]
-    emit("\n".join(markdown_lines(named, rows)))
+    lines = markdown_lines(named, rows) if result.entries or not result.landings else []
+    if result.landings:
+        lines += ["", *markdown_lines(*_landings(result))]
+    emit("\n".join(lines).lstrip())
 
 
 CSV_COLUMNS = (
@@ -125,6 +150,7 @@ CSV_COLUMNS = (
     "offset", "bound", "random", "overlay_offset", "overlay_bound", "overlay_random",
     "need_mixed", "need_rss", "need_linear", "margin_mixed", "margin_rss", "margin_linear",
     "verdict", "cpk", "fail_ppm", "point_X", "point_Y", "point_x", "point_y", "chain_rss",
+    "landing_nominal_area", "landing_mean_area", "landing_p_below_least", "landing_p_open",
 )  # fmt: skip
 
 
@@ -132,17 +158,18 @@ def _csv(result: Result) -> None:
     text = io.StringIO()
     writer = csv.DictWriter(text, CSV_COLUMNS, lineterminator="\n")
     writer.writeheader()
-    for entry in result.entries:
+    for entry in result.checks:
         row = _csv_row(entry, result.flow.unit)
         writer.writerow({k: printable(v) if isinstance(v, str) else v for k, v in row.items()})
     emit(text.getvalue().rstrip("\n"))
 
 
-def _csv_row(entry: Entry, unit: str) -> dict[str, Any]:
-    record = entry_record(entry, unit)
+def _csv_row(entry: Entry | LandingEntry, unit: str) -> dict[str, Any]:
+    record = check_record(entry, unit)
     row = {key: record[key] for key in CSV_COLUMNS if key in record}
     row |= {"first": entry.layers[0], "second": entry.layers[1], "unit": unit}
-    row["chain"] = " > ".join(entry.chain.layers)
+    row["chain"] = " > ".join(record["chain"] or ())
+    row |= _flat("landing", record.get("landing"), ("nominal_area", "mean_area", "p_below_least", "p_open"))
     row |= _flat("overlay", record["overlay"], ("offset", "bound", "random"))
     row |= _flat("need", record["need"], BASES)
     row |= _flat("margin", record["margin"], BASES)

@@ -12,6 +12,7 @@ from flowplan.report.viewanswer import AnswerView, answer_view
 from flowplan.report.viewbase import Base, plain
 from flowplan.report.viewbudget import BudgetBook
 from flowplan.report.viewhops import HopBook
+from flowplan.report.viewlanding import LandingRow, landings_view
 from flowplan.report.viewmap import LEVELS, MapFrame, map_frame, maps_of
 from flowplan.report.viewmargins import MarginsView, margins_view
 from flowplan.report.viewmarks import MarksView, marks_view
@@ -57,9 +58,11 @@ class ReportView:
     """Everything the page shows, in its order."""
 
     head: HeadView
+    n_pairs: int
     answer: AnswerView
     tree: TreeView
     margins: MarginsView
+    landings: tuple[LandingRow, ...]
     matrix: MatrixView
     map_frame: MapFrame | None
     map_levels: int
@@ -90,9 +93,11 @@ def report_view(result: Result, progress: Progress | None = None, extras: Extras
     frame = map_frame(base)
     return ReportView(
         head=_head(base),
+        n_pairs=base.n_pairs,
         answer=answer_view(base, book),
         tree=tree_view(base),
         margins=margins_view(base),
+        landings=landings_view(base),
         matrix=matrix_view(base),
         map_frame=frame,
         map_levels=LEVELS,

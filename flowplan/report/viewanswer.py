@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 
+from flowplan.engine.points import Point
 from flowplan.engine.results import VERDICTS, Entry, Verdict
 from flowplan.model.masks import Mask
 from flowplan.report.charts import ChainDrawing, chain_drawing
@@ -72,10 +73,11 @@ def answer_view(base: Base, book: HopBook) -> AnswerView:
     result = base.result
     counts = result.counts
     judged = sum(counts.values()) - counts["unjudged"]
-    pairs = counted(len(base.pair_places), "pair")
+    pairs = counted(base.n_pairs, "pair")
     left_out = f", {counts['unjudged']} of them not judged" if counts["unjudged"] and judged else ""
-    checks = counted(len(result.entries), "check")
-    detail = f"{checks} on {pairs}{left_out}. A check is one pair of layers on one axis."
+    checks = counted(len(result.checks), "check")
+    area = ", or a contact's landed area" if result.landings else ""
+    detail = f"{checks} on {pairs}{left_out}. A check is one pair of layers on one axis{area}."
     worst = result.worst
     return AnswerView(
         _headline(counts, judged),
@@ -99,9 +101,13 @@ def _headline(counts: dict[Verdict, int], judged: int) -> str:
 
 def point_words(entry: Entry) -> str:
     """Return where the figures of an entry are taken [mm]."""
-    if entry.point is None:
+    return site_words(entry.point)
+
+
+def site_words(at: Point | None) -> str:
+    """Return a place on the wafer and in its field [mm]."""
+    if at is None:
         return "the same everywhere"
-    at = entry.point
     field, site = (f"({plain(a)},{NBSP}{plain(b)})" for a, b in ((at.X, at.Y), (at.x, at.y)))
     return f"field{NBSP}{field}, site{NBSP}{site}"
 

@@ -7,6 +7,7 @@ from functools import cached_property
 from statistics import median
 
 from flowplan.engine.analysis import Result
+from flowplan.engine.landing import LandingEntry
 from flowplan.engine.results import Entry
 from flowplan.model.base import WAFER
 from flowplan.model.flow import Basis
@@ -78,6 +79,15 @@ class Base:
     def pair_anchor(self, entry: Entry) -> str:
         """Return the anchor of an entry's fold-out."""
         return f"p{self.pair_places[id(entry.pair)]}"
+
+    def landing_anchor(self, entry: LandingEntry) -> str:
+        """Return the anchor of a landing's row in its own table."""
+        return f"landing{[id(e) for e in self.result.landings].index(id(entry)) + 1}"
+
+    @property
+    def n_pairs(self) -> int:
+        """How many of the flow's pairs are shown."""
+        return len(self.pair_places) + len({id(e.pair) for e in self.result.landings})
 
     def length(self, nm: float | None) -> str:
         """Return a length in the file's unit, without the unit's name."""

@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 
+from flowplan.engine.landing import LandingEntry
 from flowplan.engine.results import Entry, Verdict
 from flowplan.report.charts import bar
 from flowplan.report.viewanswer import WORDS
@@ -41,9 +42,9 @@ class MarginsView:
 
 def margins_view(base: Base) -> MarginsView:
     """Return the margin table."""
-    named = {name for e in base.result.entries for name in e.layers}
+    named = {name for e in base.result.checks for name in e.layers}
     layers = tuple(layer for name, layer in base.names.items() if name in named)
-    return MarginsView(tuple(_row(base, e) for e in base.result.entries), layers)
+    return MarginsView(tuple(_check(base, e) for e in base.result.checks), layers)
 
 
 def used_share(need: float, room: float) -> float:
@@ -51,6 +52,28 @@ def used_share(need: float, room: float) -> float:
     if room > 0:
         return need / room
     return float("inf") if need > 0 or room < 0 else 0.0
+
+
+def _check(base: Base, check: Entry | LandingEntry) -> MarginRow:
+    return _landing(base, check) if isinstance(check, LandingEntry) else _row(base, check)
+
+
+def _landing(base: Base, entry: LandingEntry) -> MarginRow:
+    """Return a landing's row; its own table tells more."""
+    return MarginRow(
+        anchor=base.landing_anchor(entry),
+        pair=entry.pair.name,
+        rule=entry.pair.rule,
+        first=base.names[entry.layers[0]],
+        second=base.names[entry.layers[1]],
+        axis=entry.axis,
+        **dict.fromkeys(("drawn", "keep", "offset", "need", "margin", "used"), NONE),
+        bar=bar(0.0),
+        verdict=entry.verdict,
+        word=WORDS[entry.verdict],
+        cpk=NONE,
+        ppm=per_million(entry.fail_probability),
+    )
 
 
 def _row(base: Base, entry: Entry) -> MarginRow:

@@ -99,6 +99,10 @@ def masks_view(base: Base, tool_anchors: dict[str, str]) -> tuple[MaskRow, ...]:
         for name in entry.layers:
             anchor = base.pair_anchor(entry)
             pairs.setdefault(name, {})[anchor] = PairLink(anchor, entry.pair.name)
+    for landing in base.result.landings:
+        for name in landing.layers:
+            anchor = base.landing_anchor(landing)
+            pairs.setdefault(name, {})[anchor] = PairLink(anchor, landing.pair.name)
     rows, step = [], 0
     for name, layer in base.result.flow.layers.items():
         step += isinstance(layer, Mask)

@@ -78,11 +78,21 @@ def _assumptions(base: Base, flow: Flow) -> tuple[str, ...]:
         "source; uniform errors count with their standard deviation, the half-width over √3.",
         "Bounds have an unknown sign and add up in size; known offsets add up with their signs.",
         "Each axis stands on its own; a pair is judged along x and along y, not along the diagonal.",
+        *_landings(base),
         "What two layers inherit from a common reference cancels between them exactly and is not counted.",
         "Overlay is the second layer's place minus the first's. SEMI P18 writes the lower pattern minus the "
         "upper one; only the sign of offsets differs.",
         reserve,
         _where(base),
+    )
+
+
+def _landings(base: Base) -> tuple[str, ...]:
+    if not base.result.landings:
+        return ()
+    return (
+        "A landing pair is judged by its area, x and y together; remedies, levers and proposed references "
+        "look only at what is judged along an axis.",
     )
 
 
