@@ -142,7 +142,7 @@ def _self_aligned(flow: Flow, text: str) -> Named:
 
 def _show(text: ComparisonText, *, every_row: bool) -> None:
     show_note(text.heading, strong=True)
-    show_note(f"margins in {text.unit}, {text.note}")
+    show_note(f"margins in {text.unit}, {text.note}" + (f"; {text.landings}" if text.landings else ""))
     emit("")
     _show_plans(text.plans)
     for plan in text.plans[1:]:

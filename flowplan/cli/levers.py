@@ -7,7 +7,7 @@ from flowplan.cli.options import CompareForm
 from flowplan.cli.progress import Bar
 from flowplan.cli.session import read_flow
 from flowplan.cli.streams import emit, emit_json, printable
-from flowplan.cli.tables import Column, markdown_lines, show_note
+from flowplan.cli.tables import Column, markdown_lines, show_left_out, show_note
 from flowplan.engine.levers import Levers
 from flowplan.engine.levers import levers as work
 from flowplan.report.levertext import LEVER_HEADINGS, LeverText, lever_text
@@ -51,6 +51,7 @@ def _show(found: Levers, text: LeverText) -> None:
         emit(f"{text.left_out} more sizes are worth nothing by themselves (--all shows them)")
     for line in text.legend if text.rows else ():
         show_note(line)
+    show_left_out(found.flow)
 
 
 def _markdown(found: Levers, text: LeverText) -> None:

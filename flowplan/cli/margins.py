@@ -19,7 +19,7 @@ from flowplan.engine.landing import LandingEntry
 from flowplan.engine.results import Entry, Verdict
 from flowplan.errors import Diagnostic, UsageError
 from flowplan.model.flow import BASES, Basis
-from flowplan.report.landing import LANDING_HEADS, landing_cells
+from flowplan.report.landing import LANDING_HEADS, LANDING_NOTE, landing_cells
 from flowplan.report.records import check_record, margins_document
 from flowplan.report.textfigures import Figures
 
@@ -123,7 +123,7 @@ def _show(result: Result) -> None:
         show_table(*_table(result))
         emit("")
     if result.landings:
-        show_note("landed area of contacts, shares of the drawn one")
+        show_note(LANDING_NOTE)
         show_table(*_landings(result))
         emit("")
     emit(verdict_line(result))

@@ -14,7 +14,7 @@ from flowplan.cli.progress import Bar
 from flowplan.cli.session import STDIN, Opened, open_flow
 from flowplan.cli.status import Status
 from flowplan.cli.streams import emit, emit_json, tell
-from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
+from flowplan.cli.tables import Column, markdown_lines, show_left_out, show_note, show_table
 from flowplan.engine.propose import Goal, Ladder, Progress, Proposal, ladder, propose
 from flowplan.errors import Diagnostic, UsageError
 from flowplan.model.flow import Flow
@@ -60,6 +60,8 @@ def run_propose(name: str, variant: str | None, wish: Wish) -> None:
         with _search(opened.flow) as how:
             best = propose(opened.flow, changes=wish.changes, **_asked(wish, opened.flow), **how)
         _show_proposal(best, wish.form)
+    if wish.form == "table":
+        show_left_out(opened.flow, "the search weighs margins along single axes only")
     if wish.output:
         _write(name, opened, best, wish.output)
     if wish.strict and best.after.counts["fail"]:

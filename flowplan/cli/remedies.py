@@ -7,7 +7,7 @@ from flowplan.cli.options import CompareForm
 from flowplan.cli.progress import Bar
 from flowplan.cli.session import read_flow
 from flowplan.cli.streams import emit, emit_json, printable
-from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
+from flowplan.cli.tables import Column, markdown_lines, show_left_out, show_note, show_table
 from flowplan.engine.remedies import remedies as work
 from flowplan.engine.remedies_result import Remedies
 from flowplan.report.records_remedies import remedies_document
@@ -47,6 +47,7 @@ def _show(found: Remedies, texts: list[CaseText]) -> None:
     if not texts:
         emit("")
         emit(_NOTHING)
+        show_left_out(flow)
         return
     for text in texts:
         emit("")
@@ -62,6 +63,7 @@ def _show(found: Remedies, texts: list[CaseText]) -> None:
     emit("")
     for line in REMEDY_LEGEND:
         show_note(line)
+    show_left_out(flow)
 
 
 def _paragraph(text: str) -> str:

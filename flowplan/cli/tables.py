@@ -7,6 +7,8 @@ from dataclasses import dataclass
 from typing import Literal
 
 from flowplan.cli.streams import emit, folded, has_colour, printable, width
+from flowplan.model.flow import Flow
+from flowplan.report.landing import left_to_margins
 
 #: Colours say what the words already say.
 _STYLES = {"fail": "bold red", "tight": "yellow", "pass": "green"}
@@ -58,6 +60,12 @@ def show_note(text: str, *, strong: bool = False) -> None:
     if text and has_colour(sys.stdout):
         text = f"\x1b[{1 if strong else 2}m{text}\x1b[0m"
     emit(text)
+
+
+def show_left_out(flow: Flow, instead: str = "") -> None:
+    """Print what a command that judges single axes leaves out."""
+    if text := left_to_margins(flow):
+        show_note(f"{instead}: {text}" if instead else text)
 
 
 def markdown_lines(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> list[str]:

@@ -161,7 +161,8 @@ class Result:
         if not self.landings:
             return self.entries
         place = {pair.name: i for i, pair in enumerate(self.flow.pairs)}
-        return tuple(sorted((*self.entries, *self.landings), key=lambda e: place.get(e.pair.name, len(place))))
+        every = (*self.entries, *self.landings)
+        return tuple(sorted(every, key=lambda e: place.get(e.pair.name, len(place))))
 
     @property
     def counts(self) -> dict[Verdict, int]:

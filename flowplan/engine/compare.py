@@ -5,18 +5,20 @@ from dataclasses import dataclass
 from typing import Literal
 
 from flowplan.engine.analysis import Result
+from flowplan.engine.landing import LandingEntry
 from flowplan.engine.results import Entry, Verdict
-from flowplan.model.base import Axis
 from flowplan.model.differences import Difference, differences
 from flowplan.model.masks import SelfAligned
 
-Key = tuple[str, str, str, Axis]
+Key = tuple[str, str, str, str]
 #: ``unsettled``: only the first plan settles it; ``rejudged``: only one of the two judges it.
 Status = Literal[
     "same", "better", "worse", "settled", "unsettled", "appears", "disappears", "absent", "rejudged"
 ]
 #: A change below this share of the drawn value, or of what the errors take, is rounding.
 _NOISE = 1e-9
+#: A probability that changes by less is what integration leaves.
+_SAME_FAILS = 1e-8
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,9 +50,9 @@ class Row:
         The pair's name.
     layers : tuple of str
         The two layers.
-    axis : {'x', 'y'}
-        The axis.
-    entries : tuple of (Entry or None)
+    axis : {'x', 'y', 'xy'}
+        The axis; both for a landing.
+    entries : tuple of (Entry, LandingEntry or None)
         One a plan; None where the plan does not have the pair.
     margins : tuple of (float or None)
         Margins on each plan's own basis [nm]; None where nothing is judged.
@@ -62,8 +64,8 @@ class Row:
 
     pair: str
     layers: tuple[str, str]
-    axis: Axis
-    entries: tuple[Entry | None, ...]
+    axis: str
+    entries: tuple[Entry | LandingEntry | None, ...]
     margins: tuple[float | None, ...]
     overlays: tuple[float | None, ...]
     settled: tuple[bool, ...]
@@ -102,11 +104,35 @@ class Row:
         if change is None:
             return "rejudged"
         largest = max(
-            abs(v) for v in (self.overlays[0], self.overlays[plan], first.drawn, 0.0) if v is not None
+            abs(v)
+            for v in (self.overlays[0], self.overlays[plan], getattr(first, "drawn", None), 0.0)
+            if v is not None
         )
         if abs(change) <= _NOISE * largest:
             return "same"
         return "better" if change > 0 else "worse"
+
+
+@dataclass(frozen=True, slots=True)
+class LandingRow(Row):
+    """A landing pair in every plan: it has no margins, and is measured by how many contacts fail."""
+
+    @property
+    def fails(self) -> tuple[float | None, ...]:
+        """Probability of failure in each plan; None where the pair is missing or nothing is judged."""
+        return tuple(e.fail_probability if isinstance(e, LandingEntry) else None for e in self.entries)
+
+    def status(self, plan: int) -> Status:
+        """Return how the pair fared against the first plan."""
+        first, other = self.entries[0], self.entries[plan]
+        if first is None or other is None:
+            return "absent" if first is other else "appears" if first is None else "disappears"
+        before, after = self.fails[0], self.fails[plan]
+        if before is None or after is None:
+            return "same" if before is after else "rejudged"
+        if abs(after - before) <= _SAME_FAILS:
+            return "same"
+        return "better" if after < before else "worse"
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,17 +169,21 @@ def compare(named: Sequence[tuple[str, Result]]) -> Comparison:
         Plan(name, result, differences(base.flow, result.flow) if result is not base else ())
         for name, result in named
     )
-    tables = [{_key(e): e for e in plan.result.entries} for plan in plans]
+    tables = [{_key(e): e for e in plan.result.checks} for plan in plans]
     keys = dict.fromkeys(key for table in tables for key in table)
     return Comparison(plans, tuple(_row(key, plans, tables) for key in keys))
 
 
-def _key(entry: Entry) -> Key:
+def _key(entry: Entry | LandingEntry) -> Key:
     return (entry.pair.name, *entry.layers, entry.axis)
 
 
-def _row(key: Key, plans: Sequence[Plan], tables: Sequence[dict[Key, Entry]]) -> Row:
-    entries = tuple(table.get(key) for table in tables)
+def _row(key: Key, plans: Sequence[Plan], tables: Sequence[dict[Key, Entry | LandingEntry]]) -> Row:
+    found = tuple(table.get(key) for table in tables)
+    none = (None,) * len(plans)
+    if key[3] == "xy":
+        return LandingRow(key[0], (key[1], key[2]), key[3], found, none, none, (False,) * len(plans))
+    entries = tuple(e if isinstance(e, Entry) else None for e in found)
     both = [*zip(plans, entries, strict=True)]
     margins = tuple(None if e is None or e.margin is None else p.result.margin(e) for p, e in both)
     overlays = tuple(None if e is None else taken(p.result, e) for p, e in both)

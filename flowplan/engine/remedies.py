@@ -10,6 +10,7 @@ from flowplan.engine.remedies_result import Remedies
 from flowplan.engine.remedies_work import Workshop
 from flowplan.errors import Diagnostic, UsageError, nearest
 from flowplan.model.flow import Flow
+from flowplan.model.landing import Landing
 
 
 def remedies(
@@ -66,6 +67,12 @@ def _refuse_unknown(flow: Flow, names: tuple[str, ...]) -> None:
         Diagnostic("FP602", f"unknown pair {name!r}", nearest(name, known))
         for name in names
         if name not in known
+    ]
+    hint = "remedies are sought for what is judged along an axis"
+    problems += [
+        Diagnostic("FP602", f"{pair.name!r} is judged by its landed area", hint)
+        for pair in flow.pairs
+        if isinstance(pair, Landing) and pair.name in names
     ]
     if problems:
         raise UsageError(problems)

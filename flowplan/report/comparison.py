@@ -4,9 +4,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from string import ascii_uppercase
 
-from flowplan.engine.compare import Comparison, Plan, Row
+from flowplan.engine.compare import Comparison, LandingRow, Plan, Row
 from flowplan.model.differences import Difference
-from flowplan.report.records import Record, in_unit
+from flowplan.report.landing import ppm
+from flowplan.report.records import Record, finite, in_unit
 from flowplan.report.textfigures import Figures
 
 _PARTS = {
@@ -100,6 +101,11 @@ class ComparisonText:
     note: str
     plans: tuple[PlanText, ...]
     rows: tuple[RowText, ...]
+
+    @property
+    def landings(self) -> str:
+        """What the figures of landing pairs are; empty without any."""
+        return "of a landing: contacts that fail" if any(row.axis == "xy" for row in self.rows) else ""
 
     @property
     def moving(self) -> tuple[RowText, ...]:
@@ -199,6 +205,8 @@ def _row(row: Row, figures: Figures, is_split: bool) -> RowText:
             text = figures.text(margin)
         elif overlay is not None:
             text = f"±{figures.text(overlay)}"
+        elif isinstance(row, LandingRow) and row.fails[plan] is not None:
+            text = f"{ppm(row.fails[plan])} ppm"
         status = "same"
         if plan:
             status, change = row.status(plan), row.change(plan)
@@ -250,6 +258,11 @@ def _plan_record(plan: Plan, note: str, unit: str) -> Record:
 
 def _row_record(row: Row, unit: str) -> Record:
     others = range(1, len(row.entries))
+    fails = (
+        [finite(p * 1e6) if p is not None else None for p in row.fails]
+        if isinstance(row, LandingRow)
+        else None
+    )
     return {
         "pair": row.pair,
         "layers": list(row.layers),
@@ -259,4 +272,5 @@ def _row_record(row: Row, unit: str) -> Record:
         "verdict": list(row.verdicts()),
         "change": [None, *(in_unit(row.change(i), unit) for i in others)],
         "status": [None, *(row.status(i) for i in others)],
+        **({} if fails is None else {"fail_ppm": fails}),
     }

@@ -7,7 +7,11 @@ from flowplan.model.flow import Flow
 from flowplan.model.landing import Landing
 
 #: Headings of `landing_cells`; the pair and its verdict stand around them.
-LANDING_HEADS = ("nominal", "mean", "at 3 sigma", "fails, ppm", "opens, ppm", "ohm at 99 %")
+LANDING_HEADS = ("nominal", "mean", "3 sigma", "fails", "open", "ohm 99 %")
+LANDING_NOTE = (
+    "landed area of contacts, shares of the drawn one (0.135 % land with less than at 3 sigma); fails and "
+    "opens in ppm; the resistance that 99 % do not exceed"
+)
 
 
 def share(area: float) -> str:
@@ -45,4 +49,4 @@ def left_to_margins(flow: Flow) -> str:
     n = sum(isinstance(pair, Landing) for pair in flow.pairs)
     if not n:
         return ""
-    return f"{n} landing pair{'s are' if n > 1 else ' is'} not looked at here; `flowplan margins` judges areas"
+    return f"{n} landing pair{'s are' if n > 1 else ' is'} left out; `flowplan margins` judges areas"
