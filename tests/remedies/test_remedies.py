@@ -156,6 +156,21 @@ def test_others_that_get_worse_and_that_break_are_counted():
     assert found.worst == pytest.approx(40 - 30 * ROOT3)
 
 
+def test_what_failed_before_gets_worse_but_is_not_broken():
+    data = chain_of_four()
+    data["pairs"] += [overlay_pair("C", "D", limit=29, axes="x")]
+    case = next(c for c in remedies(flow_of(data)).cases if c.entry.pair.name == "A-D")
+    assert (rereads(case)["D", "A"].effect.worse, rereads(case)["D", "A"].effect.breaks) == (1, 0)
+
+
+def test_small_gain_is_a_gain():
+    data = chain_of_four()
+    data["masks"][1]["mark_reading"] = 1  # of 52 it takes a hundredth
+    found = {r.change.quoted.path: r for r in of_kind(only_case(data), "size")}
+    gain = found["masks.B.mark_reading"].margin - only_case(data).margin
+    assert gain == pytest.approx(math.sqrt(3 * 30**2 + 1) - math.sqrt(3 * 30**2))
+
+
 def test_best_comes_first():
     data = chain_of_four()
     data["pairs"] += [overlay_pair("C", "D", limit=40, axes="x")]
