@@ -110,7 +110,7 @@ def narrow(block: Block, allowed: BoolArray, best: Best, rules: Rules) -> Narrow
     while len(work):
         before = allowed[work]
         some = _within_limit(block, before.copy(), rules)
-        ok = some.any(axis=2).all(axis=1)
+        ok = np.all(some.any(axis=2), axis=1)
         alive[work[~ok]] = False
         work, some, before = work[ok], some[ok], before[ok]
         if not len(work):
@@ -157,7 +157,7 @@ class _Step:
         if rules.ties != "none":
             self._ties(np.flatnonzero(order == 0))
         self._try_options(order)
-        self.alive &= self.left.any(axis=2).all(axis=1)
+        self.alive &= np.all(self.left.any(axis=2), axis=1)
 
     def _ties(self, nodes: IntArray) -> None:
         """Keep of nodes that can be as good as the best what comes before it in changes and order."""
@@ -196,7 +196,7 @@ class _Step:
         taken = np.arange(self.grouped.shape[2]) == self.options[..., None]
         if scale.goal == "yield":
             return np.asarray(~taken)
-        apart = np.abs(self.bound - score) > scale.same
+        apart = scale.apart(self.bound, score)
         first = apart.argmax(axis=1)
         level = np.where(order == 0, np.inf, score[first] + scale.same)
         counted = first == 0 if scale.goal == "fails" else np.zeros(len(first), dtype=bool)

@@ -10,8 +10,9 @@ Each of these orders stays the same when the pairs of two groups are put togethe
 take its own best and the whole is still bounded. Pairs with the same pivot form a group: they share
 its choice.
 
-Margins are equal when they differ by no more than 1e-9 of the largest drawn dimension (sums of
-logarithms: by 1e-9); that is far above the rounding of the arithmetic and far below anything drawn.
+Margins are equal when they differ by no more than 1e-9 of the largest drawn dimension, sums of
+logarithms when they differ by no more than 1e-9 of themselves: far above the rounding of the
+arithmetic and far below anything drawn.
 """
 
 from dataclasses import dataclass
@@ -39,7 +40,7 @@ class Scale:
     goal : {'worst', 'fails', 'yield'}
         What is wanted.
     same : float
-        Figures that differ by no more are equal.
+        Margins that differ by no more are equal [nm]; for sums of logarithms, the share of them.
     """
 
     goal: Goal
@@ -63,11 +64,19 @@ class Scale:
         """Return how many margins are below 0."""
         return np.asarray((values < 0).sum(axis=-1), dtype=np.float64)
 
+    def apart(self, one: FloatArray, other: FloatArray) -> BoolArray:
+        """Return which figures, or values of pairs, differ by more than rounding."""
+        with np.errstate(invalid="ignore"):
+            difference = np.abs(one - other)
+            if self.goal == "yield":
+                return np.asarray(difference > self.same * np.maximum(np.abs(one), np.abs(other)))
+        return np.asarray(difference > self.same)
+
     def compare(self, scores: FloatArray, other: FloatArray) -> IntArray:
         """Return for each score 1 where it is better than the other, 0 where equal, -1 where worse."""
         with np.errstate(invalid="ignore"):
             difference = scores - other
-        apart = np.abs(difference) > self.same
+        apart = self.apart(scores, other)
         first = apart.argmax(axis=-1)[..., None]
         signs = np.where(apart, np.sign(difference), 0)
         return np.take_along_axis(signs, first, -1)[..., 0].astype(np.int64)
@@ -111,7 +120,8 @@ class Groups:
         grouped = self.values
         if self.scale.goal == "yield":
             total = np.where(allowed, grouped.sum(axis=3), -np.inf)
-            return (total >= total.max(axis=2, keepdims=True) - self.scale.same).argmax(axis=2)
+            alive = total >= total.max(axis=2, keepdims=True)
+            return np.asarray(alive.argmax(axis=2))
         alive = allowed.copy()
         if self.scale.goal == "fails":
             failing = np.where(alive, self.scale.fails(grouped), np.inf)
@@ -120,4 +130,4 @@ class Groups:
         for k in range(ordered.shape[3]):
             figure = np.where(alive, np.minimum(ordered[..., k], _PADDING), -np.inf)
             alive &= figure >= figure.max(axis=2, keepdims=True) - self.scale.same
-        return alive.argmax(axis=2)
+        return np.asarray(alive.argmax(axis=2))
