@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from flowplan.errors import Diagnostic, FlowError, Span, in_brief
 from flowplan.files.inputfile import decode, read_bytes
 from flowplan.files.yamltext import Places, read_yaml
-from flowplan.model.build import build
+from flowplan.model.build import MOST_DIAGNOSTICS, build
 from flowplan.model.check import check
 from flowplan.model.flow import Flow
 from flowplan.model.salvage import salvage
@@ -88,6 +88,8 @@ def parse(text: str, name: str = "<text>") -> Loaded:
 
 
 def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> list[Diagnostic]:
+    if len(findings) >= MOST_DIAGNOSTICS:
+        return []  # the list is as long as helps
     rest = salvage(data, findings)
     if rest.flow is None or not isinstance(data, dict):
         return []

@@ -84,8 +84,10 @@ def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
     path = real_path(data, loc)
     context = detail.get("ctx", {})
     if kind in CODES:
-        key = context["key"]
-        return Diagnostic(kind, context["message"], context["hint"], (*path, key) if key else path)
+        value = follow(data, path)
+        if isinstance(value, dict) and context["key"] in value:
+            path = (*path, context["key"])
+        return Diagnostic(kind, context["message"], context["hint"], path)
     if kind == "extra_forbidden":
         known = _fields_at(loc[:-1])
         return Diagnostic("FP201", f"unknown key {loc[-1]!r}", nearest(str(loc[-1]), known), path)

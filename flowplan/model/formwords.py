@@ -23,8 +23,9 @@ def type_hint(kind: str, given: object) -> str:
     if kind == "string_type":
         return "write one text" if isinstance(given, dict | list) else "put it in quotes"
     if kind in ("tuple_type", "list_type"):
-        dashes = "begin each entry with a dash and give it its `id:`" if isinstance(given, dict) else ""
-        return dashes or "write `[…]`, or a dash before each entry"
+        if isinstance(given, dict):
+            return "begin each entry with a dash: `- {key: value}`"
+        return "write `[…]`, or a dash before each entry"
     if isinstance(given, list):
         return "write `name: …` without a dash"
     return "write `{key: value}`, or the keys below, indented"
