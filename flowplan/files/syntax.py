@@ -46,7 +46,9 @@ _ADVICE: tuple[tuple[str, _Advice], ...] = (
     ),
     (
         "did not find expected '-' indicator",
-        _Advice("not indented like the list above", "indent every `- ` of one list alike"),
+        _Advice(
+            "not indented like the list above", "indent the `- ` of one list alike, and the keys of one entry"
+        ),
     ),
     (
         "did not find expected key",

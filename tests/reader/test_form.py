@@ -103,7 +103,7 @@ hint: write 0.8 or 80 %
 1: flow: Estuary
  : wafer: 150 mm
 FP203 2:8 a mapping (key: value) belongs here
-hint: write `{key: value}`, or the keys below, indented
+hint: write `{diameter: …}`, or the keys below, indented
 
 1: flow: Estuary
  : wafer: {diameter: -150 mm}
@@ -267,7 +267,7 @@ hint: indent the keys of one mapping alike; let nothing follow a closed quote or
 
 4:   - A
 FP203 4:5 a mapping (key: value) belongs here
-hint: write `{key: value}`, or the keys below, indented
+hint: write `{id: …, tool: …, aligns_to: …}`, or the keys below, indented
 
 4:   - {tool: s, aligns_to: wafer}
 FP202 4:5 'id' is missing
@@ -314,8 +314,8 @@ FP202 5:33 'y' is missing
 hint: add `y: …`
 
 5:   - {id: B, tool: s, aligns_to: 3}
-FP203 5:33 a mapping (key: value) belongs here
-hint: write `{key: value}`, or the keys below, indented
+FP203 5:33 a mask's id belongs here
+hint: name an earlier mask, or wafer
 
 6: pairs: {rule: overlay, between: [A, B]}
 FP203 6:8 a list belongs here
@@ -323,9 +323,9 @@ hint: begin each entry with a dash: `- {key: value}`
 
 6: pairs: [A, B]
 FP203 6:9 a mapping (key: value) belongs here
-hint: write `{key: value}`, or the keys below, indented
+hint: write `{rule: …}`, or the keys below, indented
 FP203 6:12 a mapping (key: value) belongs here
-hint: write `{key: value}`, or the keys below, indented
+hint: write `{rule: …}`, or the keys below, indented
 
 6: pairs: [{between: [A, B]}]
 FP202 6:9 the pair has no rule

@@ -75,7 +75,7 @@ hint: begin each `- ` on a line of its own
 
 5:    - {id: B, tool: s, aligns_to: A}
 FP104 5:4 not indented like the list above
-hint: indent every `- ` of one list alike
+hint: indent the `- ` of one list alike, and the keys of one entry
 
 5:  - {id: B, tool: s, aligns_to: A}
 FP104 5:2 not a part of the mapping that begins at line 1, column 1
