@@ -18,8 +18,8 @@ def key_hint(key: str, known: Sequence[str], value: object) -> str:
         What stands after it; nothing, where a list in braces lacks its brackets.
     """
     hint = nearest(key, known)
-    if value is None and not hint.startswith("did you mean"):
-        return f"several values need brackets: `[A, B]`; {hint}"
+    if value is None:
+        return f"several values need brackets: `[A, B]`; otherwise: {hint}"
     return hint
 
 

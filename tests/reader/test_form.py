@@ -41,6 +41,11 @@ FP401 2:7 unknown unit 'micron'
 hint: did you mean 'um'?
 
 1: flow: Estuary
+ : unit: parsecs
+FP401 2:7 unknown unit 'parsecs'
+hint: choose from nm, um, mm, cm, in
+
+1: flow: Estuary
  : unit: urad
 FP402 2:7 urad is not a length
 hint: choose from nm, um, mm, cm, in
@@ -362,6 +367,10 @@ hint: a size is 0 or more; only offsets have a sign
 6: pairs: [{rule: overlay, between: [A, B], axes: z}]
 FP204 6:48 'z' is not one of x, y, xy
 hint: known here: x, y, xy
+
+5:   - {id: B, tool: s, aligns_to: A, wafer}
+FP201 5:36 unknown key 'wafer'
+hint: several values need brackets: `[A, B]`; otherwise: did you mean 'owner'?
 """
 
 
