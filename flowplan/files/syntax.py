@@ -16,6 +16,8 @@ class _Advice(NamedTuple):
 
 
 _LINE_END = re.compile(r"\r\n|[\n\r\x85\u2028\u2029]")
+#: What YAML 1.2 does not count as a printable character.
+_FORBIDDEN = re.compile(r"[^\t\n\r\x20-\x7e\x85\xa0-\ud7ff\ue000-\ufefe\uff00-\ufffd\U00010000-\U0010ffff]")
 _DEFAULT_HINT = "check brackets, quotes and indentation"
 _QUOTE = "put the text in quotes"
 
@@ -121,11 +123,11 @@ def syntax_diagnostic(error: Any, text: str, file: str) -> Diagnostic:
 
 def unreadable_diagnostic(message: str, text: str, file: str) -> Diagnostic:
     """Return the finding for text with a character that YAML does not allow."""
-    at = next((i for i, c in enumerate(text) if not (c.isprintable() or c in "\n\r\t")), None)
-    if at is None:
+    found = _FORBIDDEN.search(text)
+    if found is None:
         told, at = "not valid YAML: " + " ".join(message.split())[:120], 0
     else:
-        told = f"the character U+{ord(text[at]):04X} cannot stand in YAML"
+        told, at = f"the character U+{ord(found.group()):04X} cannot stand in YAML", found.start()
     return Diagnostic("FP104", told, "is this a flow file?", span=span_at(text, at, file))
 
 

@@ -11,7 +11,7 @@ import pytest
 from flowplan.errors import FlowError
 from flowplan.files import inputfile
 from flowplan.files.inputfile import MOST_BYTES, read_bytes
-from flowplan.files.reader import load, parse_bytes
+from flowplan.files.reader import load, parse, parse_bytes
 from tests.reader.cases import FLOW
 
 
@@ -140,6 +140,18 @@ def test_control_characters_in_the_text():
         "FP104",
         "2:8 the character U+001B cannot stand in YAML",
     )
+
+
+def test_an_unusual_character_that_yaml_allows_is_not_blamed():
+    assert refusal_of("flow: \u202eEstuary\nnotes: \x07\n".encode())[1] == (
+        "2:8 the character U+0007 cannot stand in YAML"
+    )
+
+
+def test_half_a_character_pair_in_a_text_of_a_library_user():
+    with pytest.raises(FlowError) as error:
+        parse("flow: \ud800")
+    assert str(error.value) == "<text>:1:7: the character U+D800 cannot stand in YAML [FP104]"
 
 
 def test_fifty_megabytes_are_refused_without_being_held(tmp_path):

@@ -77,3 +77,17 @@ def test_what_a_message_quotes_is_cut_short():
     assert line.startswith("FP203 2:24 'xxxx")
     assert "…" in line
     assert len(line) < 120
+
+
+def test_aliases_that_nest_deeper_than_the_text_are_stopped():
+    text = "a0: &a0 [1]\n" + "".join(f"a{i}: &a{i} [*a{i - 1}]\n" for i in range(1, 60))
+    assert told(text) == (
+        "FP106 1:10 nested too deeply",
+        "hint: aliases make it so; write values out",
+    )
+
+
+def test_a_colon_too_many_in_the_first_line_and_after_a_comment():
+    assert told("a: b: c\n")[0] == "FP104 1:5 a `:` where no `key: value` can stand"
+    assert told("# comment\na: b: c\n")[0] == "FP104 2:5 a `:` where no `key: value` can stand"
+    assert told("a: b\n\n  c: d\n")[0] == "FP104 3:4 a `:` where no `key: value` can stand"
