@@ -78,7 +78,12 @@ def _mask(dice: random.Random, name: str, earlier: list[str], tools: list[str]) 
         "mark asymmetry": {"bound": round(dice.uniform(0.1, 0.6), 3), "enters": "marks"},
     }
     if dice.random() < 0.2:
-        terms["chuck heat"] = {"random": "0.01 ppm", "shape": "magnification", "over": "wafer", "source": "heat"}
+        terms["chuck heat"] = {
+            "random": "0.01 ppm",
+            "shape": "magnification",
+            "over": "wafer",
+            "source": "heat",
+        }
     if dice.random() < 0.2:
         terms["film stress"] = {"offset": round(dice.uniform(-1, 1), 3)}
     return {"id": name, "tool": dice.choice(tools), "aligns_to": aligns_to, "cd": 2, "terms": terms}
