@@ -78,10 +78,10 @@ def parse(text: str, name: str = "<text>") -> Loaded:
     if not isinstance(data, dict):
         what = "the file is empty" if data is None else "a flow file is a mapping (key: value)"
         hint = "`flowplan new` writes a starter flow"
-        raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1))])
+        raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1)), *places.problems])
     flow, findings = build(data)
     findings = check(flow) if flow is not None else (*findings, *_findings_in_remainder(data, findings))
-    placed = _place(findings, places)
+    placed = _place((*places.problems, *findings), places)
     if flow is None or any(d.severity == "error" for d in placed):
         raise FlowError(placed)
     return Loaded(flow, placed)
@@ -101,7 +101,9 @@ def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> li
 
 
 def _place(findings: tuple[Diagnostic, ...], places: Places) -> tuple[Diagnostic, ...]:
-    placed = [in_brief(d).at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings]
+    placed = [
+        d if d.span else in_brief(d).at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings
+    ]
     once = {(d.span, d.message): d for d in placed}
     return tuple(sorted(once.values(), key=_position))
 

@@ -51,7 +51,7 @@ SAMPLES: dict[str, Sample] = {
     "FP102": Sample("f.yaml:1:7: not UTF-8 text: the byte B5 (hexadecimal)", b"flow: \xb5"),
     "FP103": Sample("f.yaml:1:1: larger than 4 MB, which no flow file needs", "#" * 4_000_001),
     "FP104": Sample("f.yaml:1:7: the quote opened here is never closed", 'flow: "Estuary\n'),
-    "FP105": Sample("f.yaml:2:1: the key 'flow' stands twice", "flow: a\nflow: b\n"),
+    "FP105": Sample("f.yaml:2:1: the key 'flow' stands twice", line(1, "flow: a\nflow: b")),
     "FP106": Sample("f.yaml:1:47: nested too deeply", "masks: " + "[" * 60 + "]" * 60),
     "FP107": Sample("f.yaml:1:8: aliases unfold to too much or to themselves", "masks: &a [*a]\n"),
     "FP108": Sample("f.yaml:1:1: the file is empty", "# nothing\n"),

@@ -43,12 +43,16 @@ def test_faults_of_every_kind_are_told_in_file_order():
     ]
 
 
-def test_every_duplicate_key_of_a_file_is_told():
-    text = "flow: a\nflow: b\ntools: {s: {}, s: {}}\nmasks:\n- {id: A, id: B}\n"
-    assert [(d.code, d.span.line, d.span.column) for d in findings(text)] == [
+def test_every_duplicate_key_of_a_file_is_told_with_all_other_faults():
+    text = (
+        "flow: a\nflow: b\ntools: {s: {}, s: {}}\nmasks:\n- {id: A, id: B, tool: !tag t, aligns_to: wafer}\n"
+    )
+    assert [(d.code, d.span.line, d.span.column) for d in findings(text) if d.severity == "error"] == [
         ("FP105", 2, 1),
         ("FP105", 3, 16),
         ("FP105", 5, 11),
+        ("FP109", 5, 24),  # the tag of the tool t
+        ("FP301", 5, 24),  # the tool t
     ]
 
 
