@@ -80,13 +80,13 @@ def test_any_structure_under_the_keys_of_a_flow(data):
 
 
 @given(mutants())
-@fuzz(200)
+@fuzz(150)
 def test_a_flow_with_changes(data):
     read_and_use(as_yaml(data))
 
 
 @given(mutants(1))
-@fuzz(200)
+@fuzz(150)
 def test_a_flow_with_one_change(data):
     read_and_use(as_yaml(data))
 
