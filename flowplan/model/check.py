@@ -6,9 +6,11 @@ a file is reported at once.
 
 from collections import Counter
 from collections.abc import Callable, Iterator
+from itertools import islice
 
 from flowplan.errors import Diagnostic, Path, nearest
 from flowplan.model.base import AXES, WAFER
+from flowplan.model.build import MOST_DIAGNOSTICS
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import MOST_FIELDS, too_many_fields, whole_fields
 from flowplan.model.masks import Mask, References
@@ -28,9 +30,10 @@ def check(flow: Flow) -> tuple[Diagnostic, ...]:
     Returns
     -------
     tuple of Diagnostic
-        Errors and warnings in the order of the rules; paths lead into the file's data.
+        Errors and warnings in the order of the rules, at most `MOST_DIAGNOSTICS` of each; paths lead
+        into the file's data.
     """
-    return tuple(d for rule in RULES for d in rule(flow))
+    return tuple(d for rule in RULES for d in islice(rule(flow), MOST_DIAGNOSTICS))
 
 
 def _every_id(flow: Flow) -> Iterator[tuple[str, Path]]:
@@ -139,7 +142,7 @@ def _features_follow_layers(flow: Flow) -> Iterator[Diagnostic]:
 
 
 def _split_layers_exist(flow: Flow) -> Iterator[Diagnostic]:
-    known = [name for name, _ in _every_id(flow) if name not in flow.split_layers]
+    known = [mask.id for mask in flow.masks] + [feature.id for feature in flow.self_aligned]
     for name, members in flow.split_layers.items():
         if not members:
             message = f"the split layer {name!r} has no mask"
@@ -167,6 +170,7 @@ def pair_layer_paths(flow: Flow, index: int) -> tuple[Path, Path]:
 
 def _pairs_name_layers(flow: Flow) -> Iterator[Diagnostic]:
     known = [name for name, _ in _every_id(flow)]
+    twice = {name for name, count in Counter(known).items() if count > 1}
     names = Counter[str]()
     for i, pair in enumerate(flow.pairs):
         names[pair.name] += 1
@@ -175,10 +179,10 @@ def _pairs_name_layers(flow: Flow) -> Iterator[Diagnostic]:
             message = f"the pair name {pair.name!r} is used twice"
             yield Diagnostic("FP302", message, hint, ("pairs", i, "name"))
         for layer, path in zip(pair.layers, pair_layer_paths(flow, i), strict=True):
-            if layer not in known:
+            if flow.masks and layer not in known:
                 yield Diagnostic("FP301", f"unknown layer {layer!r}", nearest(layer, known), path)
         first, second = (flow.expand(layer) for layer in pair.layers)
-        if set(first) & set(second):
+        if set(first) & set(second) and not twice & set(pair.layers):
             both = pair_layer_paths(flow, i)[1]
             message = f"{pair.name!r} pairs {pair.layers[1]!r} with itself"
             yield Diagnostic("FP305", message, "name two different layers", both)
