@@ -116,4 +116,11 @@ SAMPLES: dict[str, Sample] = {
         "flowplan: 'f.gif' is no kind of drawing that flowplan writes",
         command=("tree", "f.yaml", "-o", "f.gif"),
     ),
+    "FP603": Sample(
+        "flowplan: 'B' is both freed and pinned", command=("propose", "f.yaml", "--free", "B", "--pin", "B")
+    ),
+    "FP604": Sample("flowplan: no mask has a choice of references", command=("propose", "f.yaml")),
+    "FP605": Sample(
+        "flowplan: the flow has no variant 'other'", command=("margins", "f.yaml", "--variant", "other")
+    ),
 }
