@@ -25,9 +25,9 @@ def score(goal, values):
 
 
 def compare(one, other, same):
-    """Return 1, 0 or -1 as the first score is better, equal or worse; a single figure is a yield."""
+    """Return 1, 0 or -1 as the first score is better, equal or worse."""
     for a, b in zip(one, other, strict=True):
-        if abs(a - b) > (1e-9 * max(abs(a), abs(b)) if len(one) == 1 else same):
+        if abs(a - b) > same:
             return 1 if a > b else -1
     return 0
 

@@ -56,17 +56,16 @@ def test_the_cheapest_way_wins_where_the_direct_reading_is_poor():
 
 
 @pytest.mark.parametrize("seed", range(8))
-def test_lexicographic_choice_of_independent_masks_is_an_assignment(seed):
+def test_the_yield_of_independent_masks_is_an_assignment(seed):
     """Outside check: scipy.optimize.linear_sum_assignment.
 
-    Every mask reads one of the same marks and is judged against each of them, so a choice costs it
-    what the readings say. With a penalty on each choice drawn from a matrix of costs, the yield of the
-    best plan is the sum of the cheapest entries, which an assignment with as many columns as
-    mask-mark pairs gives too.
+    Every mask reads one of four marks, each with a size of its own, so the losses of yield form a matrix
+    of costs. Any number of masks may read one mark: with every mark repeated once a mask, the cheapest
+    assignment of masks to marks is the best plan.
     """
     r = np.random.default_rng(seed)
     n, k = 6, 4
-    spread = r.uniform(4, 20, (n, k))
+    spread = r.uniform(10, 20, (n, k))
     marks = [{"id": f"R{j}", "tool": "T", "aligns_to": {"mask": "R0", "alignment": 0.001}} for j in range(k)]
     marks[0]["aligns_to"] = "wafer"
     masks = []

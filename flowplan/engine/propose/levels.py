@@ -76,7 +76,9 @@ class Solver:
                 level = min(self._gap(node.bound) for node in self.frontier)
                 if level < len(self.best.score):
                     self._aim(level)
-                self._settle(level)
+                    self._settle(level)
+                else:
+                    self._settle(None)
             self.tell()
         return not self.frontier
 
@@ -153,8 +155,8 @@ class Solver:
                 break
         return ended, search.best if search.found else None
 
-    def _settle(self, level: int) -> None:
-        """Search until all that is left can only be better in a later figure."""
+    def _settle(self, level: int | None) -> None:
+        """Search until all that is left can only be better in a figure after this one."""
         most = _LONG
         while True:
             search = self._search(self.best, most)

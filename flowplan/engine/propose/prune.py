@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.propose.block import Block
-from flowplan.engine.propose.score import Groups
+from flowplan.engine.propose.score import Groups, Scale
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Pairs' values held at once while options are tried.
@@ -55,10 +55,21 @@ class Rules:
     ties : {'none', 'break', 'keep'}
         What becomes of plans as good as the best so far: none is wanted, those that come before it by
         fewest changes and file order, or all of them.
+    parts : tuple of (slice, ndarray)
+        Pairs with the best score that they can reach, where that is known already: then no plan is
+        better, and only plans that reach it in every part are as good.
     """
 
     limit: int | None
     ties: str
+    parts: tuple[tuple[slice, FloatArray], ...] = ()
+
+    def order(self, scale: Scale, rows: FloatArray, best: Best) -> IntArray:
+        """Return 1, 0 or -1 where what pairs reach is better than, as good as or worse than the best."""
+        if not self.parts:
+            return scale.compare(scale.scores(rows), best.score)
+        orders = [scale.compare(scale.scores(rows[:, part]), score) for part, score in self.parts]
+        return np.asarray(np.minimum(0, np.min(orders, axis=0)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -150,8 +161,9 @@ class _Step:
         self.grouped, self.options = groups.values, groups.best(allowed)
         of_row = np.take_along_axis(self.options, self.pivots, axis=1)
         self.reach = np.take_along_axis(self.values, of_row[..., None], axis=2)[..., 0]
-        self.bound = scale.scores(self.reach)
-        order = scale.compare(self.bound, best.score)
+        order = rules.order(scale, self.reach, best)
+        known = np.repeat(best.score[None], len(allowed), axis=0)
+        self.bound = known if rules.parts else scale.scores(self.reach)
         self.alive = order > 0
         self.left = allowed.copy()
         if rules.ties != "none":
@@ -186,7 +198,7 @@ class _Step:
         scale = self.block.scale
         mine = self.pivots[node] == variable[:, None]
         rows = np.where(mine, self.values[node, :, option], self.reach[node])
-        order = scale.compare(scale.scores(rows), self.best.score)
+        order = self.rules.order(scale, rows, self.best)
         gone = order < (1 if self.rules.ties == "none" else 0)
         self.left[node[gone], variable[gone], option[gone]] = False
 

@@ -7,6 +7,7 @@ once, whichever axes change.
 
 import math
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -100,7 +101,10 @@ class Problem:
         root = self.block.everything
         for axis, solver in zip(self.judged, solvers, strict=True):
             root[self.block.variables[axis.axis]] &= self._as_good(solver)
-        found = self._together(clock, best, None, root)
+        rows = np.cumsum([0, *(len(axis.rows.room) for axis in self.judged)])
+        parts = tuple(slice(a, b) for a, b in pairwise(rows))
+        reached = tuple((part, s.best.score) for part, s in zip(parts, solvers, strict=True))
+        found = self._together(clock, best, None, root, reached)
         nodes = found.nodes + sum(s.nodes for s in solvers)
         return Solution(found.plan, found.score, found.proved, found.bound, nodes, found.closed)
 
@@ -142,8 +146,15 @@ class Problem:
         allowed[:, : options.shape[1]] = options
         return allowed
 
-    def _together(self, clock: Clock, best: Best, limit: int | None, root: BoolArray) -> Solution:
-        solver = Solver(self.block, best, Rules(limit, "break"), clock)
+    def _together(
+        self,
+        clock: Clock,
+        best: Best,
+        limit: int | None,
+        root: BoolArray,
+        parts: tuple[tuple[slice, FloatArray], ...] = (),
+    ) -> Solution:
+        solver = Solver(self.block, best, Rules(limit, "break", parts), clock)
 
         def tell() -> None:
             clock.best, clock.bound = self._figure(solver.best.score), self._figure(solver.bound)
