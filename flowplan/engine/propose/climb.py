@@ -7,7 +7,7 @@ from flowplan.engine.propose.prune import Best, Rules
 from flowplan.engine.sources import BoolArray, IntArray
 
 #: Pairs that are looked at, from the worst.
-_ROWS = 3
+_ROWS = 10
 #: Plans with two changes tried at once.
 _MOST = 1500
 
