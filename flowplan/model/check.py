@@ -90,10 +90,18 @@ def _tools_exist(flow: Flow) -> Iterator[Diagnostic]:
 
 
 def _every_reference(mask: Mask) -> Iterator[tuple[Path, References]]:
-    """Yield what a mask reads and what it may read, each with its place in the mask."""
+    """Yield the forms of what a mask reads and of what it may read, each with its place in the mask."""
     yield ("aligns_to",), mask.aligns_to
-    for k, candidate in enumerate(mask.may_align_to or ()):
-        yield ("may_align_to", k), candidate
+    for k, form in enumerate(mask.may_align_to or ()):
+        yield ("may_align_to", k), form
+
+
+def _every_reading(mask: Mask) -> Iterator[tuple[Path, str]]:
+    """Yield every single reading, each with its place in the mask."""
+    for where, references in _every_reference(mask):
+        for axis in AXES:
+            for k, reading in enumerate(references.on(axis)):
+                yield (*where, axis, k, "mask"), reading.mask
 
 
 def _references_are_earlier(flow: Flow) -> Iterator[Diagnostic]:
@@ -101,29 +109,27 @@ def _references_are_earlier(flow: Flow) -> Iterator[Diagnostic]:
     twice = {name for name, count in Counter(everything).items() if count > 1}
     order = {name: i for i, name in enumerate(flow.layers)}
     for i, mask in enumerate(flow.masks):
-        for where, references in _every_reference(mask):
-            for axis in AXES:
-                for k, reading in enumerate(references.on(axis)):
-                    path: Path = ("masks", i, *where, axis, k, "mask")
-                    known = order.get(reading.mask)
-                    if {mask.id, reading.mask} & twice and reading.mask in everything:
-                        continue  # which of the two is meant cannot be told
-                    if reading.mask == WAFER or (known is not None and known < order.get(mask.id, 0)):
-                        continue
-                    earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
-                    yield _bad_reference(mask.id, reading.mask, everything, earlier, flow, path)
+        for where, reads in _every_reading(mask):
+            known = order.get(reads)
+            if {mask.id, reads} & twice and reads in everything:
+                continue  # which of the two is meant cannot be told
+            if reads == WAFER or (known is not None and known < order.get(mask.id, 0)):
+                continue
+            earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
+            yield _bad_reference(mask.id, reads, everything, earlier, flow, ("masks", i, *where))
 
 
 def _bad_reference(
     mask: str, reads: str, everything: list[str], earlier: list[str], flow: Flow, path: Path
 ) -> Diagnostic:
+    aligns = "may align" if path[2] == "may_align_to" else "aligns"
     if reads == mask:
-        return Diagnostic("FP303", f"{mask!r} aligns to itself", nearest(reads, earlier), path)
+        return Diagnostic("FP303", f"{mask!r} {aligns} to itself", nearest(reads, earlier), path)
     if reads in flow.split_layers:
         hint = "name one of " + ", ".join(flow.split_layers[reads])
         return Diagnostic("FP301", f"{reads!r} is a split layer and has no mark of its own", hint, path)
     if reads in everything:
-        message = f"{mask!r} aligns to {reads!r}, which does not exist yet at that point"
+        message = f"{mask!r} {aligns} to {reads!r}, which does not exist yet at that point"
         return Diagnostic("FP303", message, "only earlier layers can be read: " + ", ".join(earlier), path)
     return Diagnostic("FP301", f"unknown mask {reads!r}", nearest(reads, earlier), path)
 
