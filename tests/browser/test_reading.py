@@ -138,9 +138,15 @@ def test_keyboard_works_the_controls(show: Open) -> None:
     assert outline == "solid", "where the keyboard is can be seen"
 
 
-@pytest.mark.parametrize("dark", [False, True], ids=["light", "dark"])
-@pytest.mark.parametrize("width", [DESKTOP, PHONE])
-@pytest.mark.parametrize("name", ["cmos"])
+@pytest.mark.parametrize(
+    ("name", "width", "dark"),
+    [
+        ("cmos", DESKTOP, False),
+        ("pressure_sensor", DESKTOP, True),
+        ("pressure_sensor", PHONE, False),
+        ("pressure_sensor", PHONE, True),
+    ],
+)
 def test_axe_finds_nothing_serious(name: str, width: int, dark: bool, show: Open) -> None:
     page = show(name, width=width, dark=dark)
     page.locator("details.pair").nth(1).evaluate("e => { e.open = true; }")
