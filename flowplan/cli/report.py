@@ -1,5 +1,8 @@
 """``flowplan report``: the report as one HTML page."""
 
+import gc
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 
 import typer
@@ -24,14 +27,28 @@ def report(name: str, variant: str | None, output: str | None, *, strict: bool) 
 
     with Bar("margins") as bar:
         result = analyse(opened.flow, progress=bar.step)
-    with Bar("report") as bar:
-        page = render_report(result, progress=bar.step, extras=report_extras(result, opened.variants))
+    with Bar("remedies") as bar:
+        extras = report_extras(result, opened.variants, progress=bar.step)
+    with Bar("report") as bar, _no_search_for_cycles():
+        page = render_report(result, progress=bar.step, extras=extras)
     write_output(target, page, flow=name)
     tell(f"wrote {printable(target)}")
     tell(verdict_line(result))
     tell(f"worst: {printable(worst_line(result))}")
     if strict and result.counts["fail"]:
         raise typer.Exit(Status.FAILS)
+
+
+@contextmanager
+def _no_search_for_cycles() -> Iterator[None]:
+    """Keep the collector still: a large report's records all live to its end and hold no cycles."""
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_on:
+            gc.enable()
 
 
 def default_output(flow: str) -> str:
