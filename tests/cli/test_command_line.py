@@ -186,12 +186,14 @@ def test_a_shell_may_hand_over_the_flow_through_a_pipe(tmp_path, flow):
 
 
 @pytest.mark.parametrize("output", ["none/out.svg", "folder.svg", "four.svg/out.svg"])
-@pytest.mark.parametrize("command", ["report", "tree"])
-def test_an_output_that_cannot_be_written_is_told_before_the_work(run, flow, monkeypatch, command, output):
+@pytest.mark.parametrize(("command", "reader"), [("report", "open_flow"), ("tree", "read_flow")])
+def test_an_output_that_cannot_be_written_is_told_before_the_work(
+    run, flow, monkeypatch, command, reader, output
+):
     def work(*_args, **_kwargs):
         raise AssertionError("the flow was read first")
 
-    monkeypatch.setattr(f"flowplan.cli.{command}.read_flow", work)
+    monkeypatch.setattr(f"flowplan.cli.{command}.{reader}", work)
     Path("folder.svg").mkdir()
     Path("four.svg").write_text("a file")
     result = run(command, flow, "-o", output)
