@@ -6,8 +6,8 @@ from typing import Any
 import pytest
 
 from flowplan.engine.remedies import remedies
-from flowplan.engine.remedies_changes import Redraw, Reread, Resize, SelfAlign, apply
-from flowplan.engine.remedies_result import Case, Remedy
+from flowplan.engine.remedies.changes import Redraw, Reread, Resize, SelfAlign, apply
+from flowplan.engine.remedies.result import Case, Remedy
 from flowplan.errors import UsageError
 from flowplan.model.differences import readings_text
 from flowplan.model.paths import quoted_sizes
