@@ -158,7 +158,8 @@ class _Step:
         scale = block.scale
         self.values, self.pivots = block.reach(allowed)
         groups = Groups(self.values, self.pivots, allowed.shape[1], scale)
-        self.grouped, self.options = groups.values, groups.best(allowed)
+        self.grouped, self.equal = groups.values, groups.best(allowed)
+        self.options = self.equal.argmax(axis=2)
         of_row = np.take_along_axis(self.options, self.pivots, axis=1)
         self.reach = np.take_along_axis(self.values, of_row[..., None], axis=2)[..., 0]
         order = rules.order(scale, self.reach, best)
@@ -188,11 +189,34 @@ class _Step:
     def _try_options(self, order: IntArray) -> None:
         """Take away the options with which a node would no longer be wanted."""
         tried = self._doubtful(order) & self.left & self.alive[:, None, None]
-        node, variable, option = np.nonzero(tried)
+        sure = self._surely_worse(order) & tried
+        self.left[sure] = False
+        node, variable, option = np.nonzero(tried & ~sure)
         step = max(1, _MOST_TRIED // self.reach.shape[1])
         for i in range(0, len(node), step):
             some = slice(i, i + step)
             self._try(node[some], variable[some], option[some])
+
+    def _surely_worse(self, order: IntArray) -> BoolArray:
+        """Return options that need no trial, shape (n_nodes, n_variables, n_options).
+
+        Of a node that is just as good as the best, each worse option of a group makes it worse. Another
+        agrees with the best up to a figure; an option of which more pairs fall short of that figure than
+        of the option taken brings the node below the best there.
+        """
+        scale, grouped = self.block.scale, self.grouped
+        if scale.goal == "yield":
+            return np.zeros(grouped.shape[:3], dtype=bool)
+        tied = order == 0
+        sure = np.zeros(grouped.shape[:3], dtype=bool)
+        sure[tied] = ~self.equal[tied]
+        if scale.goal == "worst" and not tied.all():
+            first = scale.apart(self.bound, self.best.score).argmax(axis=1)
+            least = self.best.score[first] - scale.same
+            short = (grouped < least[:, None, None, None]).sum(axis=3)
+            more = short > np.take_along_axis(short, self.options[..., None], axis=2)
+            sure[~tied] = more[~tied]
+        return sure
 
     def _try(self, node: IntArray, variable: IntArray, option: IntArray) -> None:
         scale = self.block.scale

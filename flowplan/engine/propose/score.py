@@ -108,8 +108,8 @@ class Groups:
         self.values = np.full((len(values), n_variables, values.shape[2], place.max() + 1), nothing)
         self.values[node, ordered, :, place] = values[node, order]
 
-    def best(self, allowed: BoolArray) -> IntArray:
-        """Return the best option of every variable, shape (n_nodes, n_variables); the first on a tie.
+    def best(self, allowed: BoolArray) -> BoolArray:
+        """Return which options of every variable none is better than, shape (n_nodes, n_variables, n_options).
 
         Parameters
         ----------
@@ -119,8 +119,7 @@ class Groups:
         grouped = self.values
         if self.scale.goal == "yield":
             total = np.where(allowed, grouped.sum(axis=3), -np.inf)
-            alive = total >= total.max(axis=2, keepdims=True)
-            return np.asarray(alive.argmax(axis=2))
+            return np.asarray(total >= total.max(axis=2, keepdims=True))
         alive = allowed.copy()
         if self.scale.goal == "fails":
             failing = np.where(alive, self.scale.fails(grouped), np.inf)
@@ -129,4 +128,4 @@ class Groups:
         for k in range(ordered.shape[3]):
             figure = np.where(alive, np.minimum(ordered[..., k], _PADDING), -np.inf)
             alive &= figure >= figure.max(axis=2, keepdims=True) - self.scale.same
-        return np.asarray(alive.argmax(axis=2))
+        return alive
