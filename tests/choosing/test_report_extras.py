@@ -43,5 +43,5 @@ def test_only_the_neediest_are_listed_and_the_rest_counted(monkeypatch):
 
 
 def test_nothing_to_mend():
-    fine = FLOW.model_copy(update={"confidence": 1.0})
+    fine = FLOW.model_copy(update={"confidence": 0.5})
     assert "there is nothing to mend" in render_report(analyse(fine), extras=report_extras(analyse(fine), {}))
