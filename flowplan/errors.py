@@ -6,10 +6,12 @@
     ``OutputError``   a result cannot be written
 """
 
+import heapq
 import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from difflib import get_close_matches
+from itertools import takewhile
 from typing import Literal
 
 Path = tuple[str | int, ...]
@@ -143,6 +145,8 @@ class OutputError(FlowplanError):
 
 #: Longer than any key or id that somebody mistypes.
 _LONGEST_WORD = 100
+#: Comparing is slow; of more words than this the ones with like beginnings and ends are compared.
+_MOST_COMPARED = 60
 _LONGEST_QUOTE = 60
 _LONGEST_MESSAGE = 300
 _QUOTED = re.compile(r"'[^']{61,}'|\"[^\"]{61,}\"")
@@ -193,13 +197,26 @@ def nearest(word: str, known: Sequence[str]) -> str:
     str
         A sentence for `Diagnostic.hint`; empty when nothing is known.
     """
+    everything = known
     if len(word) > _LONGEST_WORD:
         return ""
+    if len(known) > _MOST_COMPARED:
+        known = heapq.nlargest(_MOST_COMPARED, known, key=lambda name: _alike_at_ends(word, name))
     folded = {k.casefold(): k for k in reversed(known)}
     close = get_close_matches(word.casefold(), list(folded), n=1, cutoff=0.6)
     if close:
         return f"did you mean {folded[close[0]]!r}?"
-    if not known:
+    if not everything:
         return ""
-    shown = ", ".join(known[:12]) + (", …" if len(known) > 12 else "")
+    shown = ", ".join(everything[:12]) + (", …" if len(everything) > 12 else "")
     return f"known here: {shown}"
+
+
+def _alike_at_ends(one: str, other: str) -> int:
+    """Count the characters that two words share at their beginning and at their end."""
+    one, other = one.casefold(), other.casefold()
+    return _alike(one, other) + _alike(one[::-1], other[::-1])
+
+
+def _alike(one: str, other: str) -> int:
+    return sum(1 for _ in takewhile(lambda pair: pair[0] == pair[1], zip(one, other, strict=False)))

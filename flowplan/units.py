@@ -126,7 +126,7 @@ def parse_quantity(text: str) -> Quantity:
         raise UnitError(
             "FP203",
             f"{text!r} is not a number with a unit",
-            'write for example 120 or "0.12 um", with a point for decimals'
+            'write for example 120 or "0.12 um", with a point for decimals',
         )
     number, unit = match.groups()
     return Quantity(float(number), canonical_unit(unit) if unit else None)

@@ -63,6 +63,8 @@ def _show_summary(opened: Opened, result: Result) -> None:
         ("verdicts", f"{verdict_line(result)} ({flow.basis} basis, {flow.confidence:g} sigma)"),
         ("worst", worst_line(result)),
     ]
+    if opened.variants and flow.variant is None:
+        rows.append(("variants", ", ".join(opened.variants)))
     found = count_findings(opened.warnings)
     emit(folded(f"{printable(flow.heading)}: sound" + (f", with {found}" if found else ""), 2))
     for label, value in rows:

@@ -9,7 +9,7 @@ from flowplan.cli.session import read_flow
 from flowplan.cli.streams import emit, emit_json, printable
 from flowplan.cli.tables import Column, markdown_lines, show_left_out, show_note, show_table
 from flowplan.engine.remedies import remedies as work
-from flowplan.engine.remedies_result import Remedies
+from flowplan.engine.remedies.result import Remedies
 from flowplan.report.records_remedies import remedies_document
 from flowplan.report.remedytext import REMEDY_HEADINGS, REMEDY_LEGEND, CaseText, RemedyWords
 

@@ -1,5 +1,8 @@
 """``flowplan report``: the report as one HTML page."""
 
+import gc
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -61,12 +64,13 @@ def report(
 
     with Bar("margins") as bar:
         result = analyse(opened.flow, progress=bar.step)
-    extras = report_extras(result, opened.variants)
+    with Bar("remedies") as bar:
+        extras = report_extras(result, opened.variants, progress=bar.step)
     if samples is not None:
         extras = replace(extras, simulation=_simulated(result, samples))
     if data is not None:
         extras = replace(extras, measured=_measured(result, data))
-    with Bar("report") as bar:
+    with Bar("report") as bar, _no_search_for_cycles():
         page = render_report(result, progress=bar.step, extras=extras)
     write_output(target, page, flow=name)
     tell(f"wrote {printable(target)}")
@@ -97,6 +101,18 @@ def _measured(result: Result, data: MeasuredData) -> "MeasuredView":
         taken = take_measurements(result.flow, data.file, asked, bar.step)
     warn(taken)
     return measured_view(taken)
+
+
+@contextmanager
+def _no_search_for_cycles() -> Iterator[None]:
+    """Keep the collector still: a large report's records all live to its end and hold no cycles."""
+    was_on = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_on:
+            gc.enable()
 
 
 def default_output(flow: str) -> str:

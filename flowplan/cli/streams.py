@@ -64,7 +64,8 @@ def printable(text: str) -> str:
 
 def width() -> int:
     """Return how many columns standard output has: a terminal's, or 80."""
-    return shutil.get_terminal_size().columns if sys.stdout.isatty() else PIPE_WIDTH
+    terminal = sys.stdout is not None and sys.stdout.isatty()
+    return shutil.get_terminal_size().columns if terminal else PIPE_WIDTH
 
 
 def folded(text: str, hanging: int = 0) -> str:

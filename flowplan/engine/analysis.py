@@ -22,7 +22,8 @@ from flowplan.model.landing import Landing
 from flowplan.model.pairs import AnyPair, Overlay
 
 Progress = Callable[[int, int], None]
-_BATCH = 512
+#: Rows worked out together; close layers share what they inherit, so a small batch has few modes.
+_BATCH = 256
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,11 +79,13 @@ class Engine:
         rows = rows_of(self.flow, self.flow.pairs if pairs is None else pairs)
         found: dict[int, Entry] = {}
         for axis in AXES:
-            chosen = [i for i, row in enumerate(rows) if row.axis == axis]
+            chosen = sorted(
+                (i for i, row in enumerate(rows) if row.axis == axis), key=self._process_order(rows)
+            )
             for start in range(0, len(chosen), _BATCH):
                 batch = chosen[start : start + _BATCH]
-                res = residuals(self.flow, self.placement, tuple(rows[i] for i in batch), axis)
-                found.update(zip(batch, entries_of(self.view(axis), res), strict=True))
+                entries = entries_of(self.view(axis), tuple(rows[i] for i in batch))
+                found.update(zip(batch, entries, strict=True))
                 if progress:
                     progress(len(found), len(rows))
         return tuple(found[i] for i in range(len(rows)))
@@ -94,6 +97,10 @@ class Engine:
         return tuple(
             entry for pair in wanted if isinstance(pair, Landing) for entry in landing_entries(view, pair)
         )
+
+    def _process_order(self, rows: Sequence[Row]) -> Callable[[int], tuple[int, int]]:
+        index = self.placement.index
+        return lambda i: (index[rows[i].second], index[rows[i].first])
 
     def margin_map(self, entries: Sequence[Entry]) -> FloatArray:
         """Return the margins of entries of one axis at every site.
@@ -161,7 +168,7 @@ class Result:
         if not self.landings:
             return self.entries
         place = {pair.name: i for i, pair in enumerate(self.flow.pairs)}
-        every = (*self.entries, *self.landings)
+        every: tuple[Entry | LandingEntry, ...] = (*self.entries, *self.landings)
         return tuple(sorted(every, key=lambda e: place.get(e.pair.name, len(place))))
 
     @property

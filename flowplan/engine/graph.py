@@ -43,12 +43,12 @@ class AlignmentGraph:
         self._order = {WAFER: 0} | {name: i + 1 for i, name in enumerate(flow.layers)}
         self._graphs: dict[Axis, nx.DiGraph[Any]] = {axis: _graph(flow, axis) for axis in AXES}
         self._names = tuple(self._order)
+        self._references = {axis: _references(graph) for axis, graph in self._graphs.items()}
         self._inherited = {axis: self._ancestor_sets(axis) for axis in AXES}
 
     def references(self, layer: str, *, axis: Axis) -> tuple[tuple[str, float], ...]:
         """Return the layer's references with their weights, in the order of the file."""
-        targets = self._graphs[axis].adj[layer]
-        return tuple((reference, float(data["weight"])) for reference, data in targets.items())
+        return self._references[axis][layer]
 
     def readers(self, layer: str, *, axis: Axis) -> tuple[str, ...]:
         """Return the layers that read or follow this one, in process order."""
@@ -57,7 +57,7 @@ class AlignmentGraph:
 
     def is_averaged(self, layer: str, *, axis: Axis) -> bool:
         """Whether the layer reads more than one reference."""
-        return int(self._graphs[axis].out_degree(layer)) > 1
+        return len(self._references[axis][layer]) > 1
 
     def common_reference(self, *, first: str, second: str, axis: Axis) -> str:
         """Return the latest layer that both derive from; either may be it itself."""
@@ -118,6 +118,13 @@ class AlignmentGraph:
             if ways:
                 best[node] = max(ways, key=lambda way: way[0])
         return best[layer][1]
+
+
+def _references(graph: "nx.DiGraph[Any]") -> dict[str, tuple[tuple[str, float], ...]]:
+    return {
+        layer: tuple((reference, float(data["weight"])) for reference, data in targets.items())
+        for layer, targets in graph.adj.items()
+    }
 
 
 def _graph(flow: Flow, axis: Axis) -> "nx.DiGraph[Any]":

@@ -1,7 +1,7 @@
 """From residuals to margins: the worst point first, then every figure exactly there."""
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -9,7 +9,7 @@ from flowplan.engine.graph import AlignmentGraph, Chain
 from flowplan.engine.parts import CHUNK, Kernel, quadratic
 from flowplan.engine.placement import Placement
 from flowplan.engine.points import Sites
-from flowplan.engine.residual import Residuals
+from flowplan.engine.residual import Residuals, Row, residuals
 from flowplan.engine.results import Budget, ByBasis, Entry, Parts, Verdict
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.base import Axis
@@ -177,35 +177,43 @@ class AxisView:
     graph: AlignmentGraph
 
 
-def entries_of(view: AxisView, res: Residuals) -> list[Entry]:
-    """Return the entries of rows on one axis, each at its worst site."""
-    found: list[Entry] = []
-    step = max(1, CHUNK // max(1, view.kernel.table.size))
-    worst = worst_sites(res, view.kernel, view.sites, view.flow)
-    chains = [view.graph.chain(first=r.first, second=r.second, axis=r.axis) for r in res.rows]
-    hand = _chain_rss(view, chains, worst)
-    for i in range(0, len(res.rows), step):
-        part = slice(i, i + step)
-        found += _entries(view, select(res, part), worst[part], chains[part], hand[part])
-    return found
+def entries_of(view: AxisView, rows: tuple[Row, ...]) -> list[Entry]:
+    """Return the entries of rows on one axis, each at its worst site.
+
+    Rows of layers that lie close together in the process share most of what they inherit, which then
+    never has to be looked at; so a batch of such rows costs little.
+    """
+    index = view.placement.index
+    layers = np.array(sorted({index[name] for row in rows for name in (row.first, row.second)}))
+    modes = view.placement.telling(view.axis, layers)
+    res = residuals(view.flow, view.placement, rows, view.axis, modes)
+    narrow = replace(view, kernel=view.kernel.narrowed(modes))
+    worst = worst_sites(res, narrow.kernel, view.sites, view.flow)
+    chains = [view.graph.chain(first=r.first, second=r.second, axis=r.axis) for r in rows]
+    return _entries(narrow, res, worst, chains, _chain_rss(view, chains, worst))
 
 
 def _chain_rss(view: AxisView, chains: list[Chain], worst: IntArray) -> FloatArray:
-    """Root-sum-square of the hops' own overlays; NaN where references are averaged."""
-    index = view.placement.index
-    hops = sorted({hop for c in chains if not c.one_of_several for hop in c.hops()})
-    place = {hop: i for i, hop in enumerate(hops)}
-    overlay = view.placement.overlay(
-        view.axis, [index[reference] for _, reference in hops], [index[child] for child, _ in hops]
-    )
-    forms = view.kernel.gram(overlay)
-    result = np.full(len(chains), np.nan)
-    for i, chain in enumerate(chains):
-        if not chain.one_of_several:
-            form = forms[[place[hop] for hop in chain.hops()]].sum(axis=0, keepdims=True)
-            at = view.sites.basis[:, worst[i] : worst[i] + 1]
-            result[i] = view.flow.confidence * math.sqrt(quadratic(form, at)[0, 0])
-    return result
+    """Root-sum-square of the hops' own overlays, shape (n_chains,); NaN where references are averaged."""
+    found = np.full(len(chains), np.nan)
+    single = np.array([i for i, chain in enumerate(chains) if not chain.one_of_several], dtype=np.int64)
+    hops = sorted({hop for i in single for hop in chains[i].hops()})
+    if not hops:
+        return found
+    place = {hop: k for k, hop in enumerate(hops)}
+    child, reference = ([view.placement.index[hop[end]] for hop in hops] for end in (0, 1))
+    modes = view.placement.telling(view.axis, np.unique([*child, *reference]))
+    kernel = view.kernel.narrowed(modes)
+    overlay = view.placement.overlay(view.axis, reference, child, modes)
+    for site in np.unique(worst[single]):
+        here = [(i, [place[hop] for hop in chains[i].hops()]) for i in single[worst[single] == site]]
+        variance = np.zeros(len(hops))
+        used = sorted({k for _, places in here for k in places})
+        at = np.repeat(view.sites.basis[:, site : site + 1], len(used), axis=1)
+        variance[used] = (kernel.at_points(overlay[used], at) ** 2) @ kernel.sigma_by_source() ** 2
+        for i, places in here:
+            found[i] = view.flow.confidence * math.sqrt(variance[places].sum())
+    return found
 
 
 def _entries(

@@ -6,10 +6,9 @@ import numpy as np
 
 from flowplan.engine.analysis import Engine
 from flowplan.engine.margin import margins_over_sites
-from flowplan.engine.parts import Kernel
 from flowplan.engine.points import Sites, basis_at
 from flowplan.engine.residual import Residuals, Row
-from flowplan.engine.sources import FloatArray, IntArray, ModeTable
+from flowplan.engine.sources import FloatArray
 from flowplan.model.base import Axis
 from flowplan.model.pairs import Overlay
 
@@ -37,26 +36,18 @@ def overlay_matrix(engine: Engine, axis: Axis) -> FloatArray:
     Every part of the error is a convex function of the four coordinates of a site, so its largest
     value lies at a corner of their hull; `outer_sites` are enough.
     """
-    pattern = engine.placement.pattern[axis][1:]
+    n = len(engine.flow.layers)
     sites = outer_sites(engine.sites)
-    found = np.zeros((len(pattern), len(pattern)))
-    blocks = [np.arange(start, min(start + _BLOCK, len(pattern))) for start in range(0, len(pattern), _BLOCK)]
+    found = np.zeros((n, n))
+    blocks = [np.arange(start, min(start + _BLOCK, n)) for start in range(0, n, _BLOCK)]
     for rows, columns in combinations_with_replacement(blocks, 2):
-        modes = np.flatnonzero(np.ptp(pattern[np.union1d(rows, columns)], axis=0) > 0)
+        modes = engine.placement.telling(axis, np.union1d(rows, columns) + 1)
         first, second = (part.reshape(-1) for part in np.meshgrid(rows, columns, indexing="ij"))
         overlay = engine.placement.overlay(axis, list(first + 1), list(second + 1), modes)
-        kernel = narrowed(engine.view(axis).kernel, modes)
+        kernel = engine.view(axis).kernel.narrowed(modes)
         worst = -margins_over_sites(_unjudged(overlay, axis), kernel, sites, engine.flow).min(axis=1)
         found[first, second] = found[second, first] = worst
     return found
-
-
-def narrowed(kernel: Kernel, modes: IntArray) -> Kernel:
-    """Return the kernel of some of the modes; the others must not occur."""
-    source = kernel.table.source[modes]
-    active, starts = np.unique(source, return_index=True)
-    table = ModeTable(source, kernel.table.basis[modes], starts.astype(np.int64), active)
-    return Kernel(table, kernel.sigma[modes], kernel.bound[modes], kernel.offset[modes])
 
 
 def outer_sites(sites: Sites) -> Sites:

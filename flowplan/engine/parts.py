@@ -40,6 +40,13 @@ class Kernel:
             np.array([kind == "offset" for kind in kinds], dtype=np.float64),
         )
 
+    def narrowed(self, modes: IntArray) -> "Kernel":
+        """Return the kernel of some of the modes, in rising order; the others must not occur."""
+        source = self.table.source[modes]
+        active, starts = np.unique(source, return_index=True)
+        table = ModeTable(source, self.table.basis[modes], starts.astype(np.int64), active)
+        return Kernel(table, self.sigma[modes], self.bound[modes], self.offset[modes])
+
     def by_source(self, amounts: FloatArray) -> FloatArray:
         """Sum modes that belong to one source, shape (n_rows, n_active)."""
         if not len(self.table.starts):

@@ -95,6 +95,24 @@ class Placement:
         difference[np.abs(difference) <= _DUST * (np.abs(a) + np.abs(b))] = 0.0
         return difference
 
+    def telling(self, axis: Axis, layers: IntArray) -> IntArray:
+        """Return the modes that tell some of these layers apart or move their edges.
+
+        Parameters
+        ----------
+        axis : {'x', 'y'}
+            Axis of the modes.
+        layers : ndarray of int
+            Rows of the layers, see `index`.
+
+        Returns
+        -------
+        ndarray of int
+            Columns of `pattern` and `edge`; every other one cancels between any two of the layers.
+        """
+        differs = np.ptp(self.pattern[axis][layers], axis=0) > 0
+        return np.flatnonzero(differs | self.edge[axis][layers].any(axis=0))
+
 
 def place(flow: Flow, *, apart: bool = False) -> Placement:
     """Place every layer of a flow.

@@ -16,7 +16,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.placement import Placement
-from flowplan.engine.sources import FloatArray
+from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.base import Axis
 from flowplan.model.flow import Flow
 from flowplan.model.landing import Landing
@@ -76,7 +76,9 @@ def rows_of(flow: Flow, pairs: Iterable[AnyPair]) -> tuple[Row, ...]:
     )
 
 
-def residuals(flow: Flow, placement: Placement, rows: tuple[Row, ...], axis: Axis) -> Residuals:
+def residuals(
+    flow: Flow, placement: Placement, rows: tuple[Row, ...], axis: Axis, modes: IntArray | None = None
+) -> Residuals:
     """Return the residuals of rows that lie on one axis.
 
     Parameters
@@ -89,16 +91,18 @@ def residuals(flow: Flow, placement: Placement, rows: tuple[Row, ...], axis: Axi
         Rows on `axis`.
     axis : {'x', 'y'}
         The axis.
+    modes : ndarray of int, optional
+        Only these modes.
     """
     first = [placement.index[row.first] for row in rows]
     second = [placement.index[row.second] for row in rows]
     signs = np.array([row.pair.edge_signs for row in rows], dtype=np.float64).reshape(-1, 2)
-    edge = placement.edge[axis]
+    edge = placement.edge[axis] if modes is None else placement.edge[axis][:, modes]
     edges = signs[:, :1] * edge[first] + signs[:, 1:] * edge[second]
     drawn, keep = zip(*(drawn_and_keep(flow, row) for row in rows), strict=True) if rows else ((), ())
     return Residuals(
         rows,
-        placement.overlay(axis, first, second),
+        placement.overlay(axis, first, second, modes),
         edges,
         np.array(drawn, dtype=np.float64),
         np.array(keep, dtype=np.float64),

@@ -128,7 +128,8 @@ class Entry:
         The worst point; None where the margin is the same everywhere.
     chain_rss : float or None
         What a plain root-sum-square along the chain would have said [nm], to be compared with
-        ``overlay.random``; None where references are averaged.
+        ``overlay.random``; None where references are averaged. Taken at `point`, or at the first
+        site where the margin itself is the same everywhere.
     budget : Budget
         The residual's sources.
     """

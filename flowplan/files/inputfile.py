@@ -1,5 +1,6 @@
 """The bytes and the text of a flow file, whatever the name turns out to stand for."""
 
+import codecs
 import os
 import stat
 import time
@@ -14,7 +15,7 @@ MOST_BYTES = 4_000_000
 PATIENCE = 60.0
 
 _BLOCK = 65_536
-_UTF16_MARKS = (b"\xff\xfe", b"\xfe\xff")
+_UTF16_MARKS = (codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE)
 
 
 def read_bytes(file: str | os.PathLike[str]) -> bytes:
@@ -112,10 +113,11 @@ def decode(raw: bytes, name: str) -> str:
         raise FlowError(
             [Diagnostic("FP102", message, "is this the right file? save it as UTF-8", span=start)]
         )
+    raw = raw.removeprefix(codecs.BOM_UTF8)
     try:
-        return raw.decode("utf-8-sig")
+        return raw.decode()
     except UnicodeDecodeError as error:
-        before = raw[: error.start].decode("utf-8-sig")
+        before = raw[: error.start].decode()
         span = span_at(before + "?", len(before), name)
         message = f"not UTF-8 text: the byte {raw[error.start]:02X} (hexadecimal)"
         raise FlowError([Diagnostic("FP102", message, "save the file as UTF-8", span=span)]) from None

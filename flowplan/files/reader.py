@@ -7,7 +7,7 @@ from flowplan.errors import Diagnostic, FlowError, Span, UsageError, in_brief, n
 from flowplan.files.inputfile import decode, read_bytes
 from flowplan.files.plans import Examined, read_variants
 from flowplan.files.yamltext import Places, read_yaml
-from flowplan.model.build import build
+from flowplan.model.build import MOST_DIAGNOSTICS, build
 from flowplan.model.check import check
 from flowplan.model.flow import Flow
 from flowplan.model.salvage import salvage
@@ -99,10 +99,10 @@ def parse(text: str, name: str = "<text>") -> Loaded:
     if not isinstance(data, dict):
         what = "the file is empty" if data is None else "a flow file is a mapping (key: value)"
         hint = "`flowplan new` writes a starter flow"
-        raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1))])
+        raise FlowError([Diagnostic("FP108", what, hint, span=Span(name, 1, 1)), *places.problems])
     flow, findings = base = _examine(data)
     variants, of_variants = read_variants(data, base, _examine)
-    placed = _place((*findings, *of_variants), places)
+    placed = _place((*places.problems, *findings, *of_variants), places)
     if flow is None or any(d.severity == "error" for d in placed):
         raise FlowError(placed)
     return Loaded(flow, placed, variants)
@@ -116,6 +116,8 @@ def _examine(data: dict[str, object]) -> Examined:
 
 
 def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> list[Diagnostic]:
+    if len(findings) >= MOST_DIAGNOSTICS:
+        return []  # the list is as long as helps
     rest = salvage(data, findings)
     if rest.flow is None or not isinstance(data, dict):
         return []
@@ -127,7 +129,9 @@ def _findings_in_remainder(data: object, findings: tuple[Diagnostic, ...]) -> li
 
 
 def _place(findings: tuple[Diagnostic, ...], places: Places) -> tuple[Diagnostic, ...]:
-    placed = [in_brief(d).at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings]
+    placed = [
+        d if d.span else in_brief(d).at(places.span(d.path, of_key=d.code in _AT_KEY)) for d in findings
+    ]
     once = {(d.span, d.message): d for d in placed}
     return tuple(sorted(once.values(), key=_position))
 

@@ -9,7 +9,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
-from flowplan.errors import Diagnostic, Path, UsageError
+from flowplan.errors import Diagnostic, FlowError, Path, UsageError
 from flowplan.files.yamltext import read_yaml
 
 _ANCHOR = re.compile(r"&\S+\s+")
@@ -55,7 +55,9 @@ def _marked_nodes(text: str, name: str) -> Any:
     """Return the text's nodes with the marks of their ends, once it is known to be readable."""
     from ruamel.yaml import YAML
 
-    read_yaml(text, name)
+    _, places = read_yaml(text, name)
+    if places.problems:
+        raise FlowError(places.problems)
     return YAML(typ="safe").compose(text)
 
 

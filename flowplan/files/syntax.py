@@ -16,8 +16,14 @@ class _Advice(NamedTuple):
 
 
 _LINE_END = re.compile(r"\r\n|[\n\r\x85\u2028\u2029]")
+#: What YAML 1.2 does not count as a printable character.
+_FORBIDDEN = re.compile(r"[^\t\n\r\x20-\x7e\x85\xa0-\ud7ff\ue000-\ufefe\uff00-\ufffd\U00010000-\U0010ffff]")
 _DEFAULT_HINT = "check brackets, quotes and indentation"
 _QUOTE = "put the text in quotes"
+
+_NO_COLON = _Advice(
+    "a key without its `: `", "write `key: value`; indent what continues the line above", at_begin=True
+)
 
 #: Part of the parser's complaint -> advice; the first that fits counts. ``{sign}`` is the character at
 #: the place, ``{begin}`` the line and column where the broken part began.
@@ -28,16 +34,12 @@ _ADVICE: tuple[tuple[str, _Advice], ...] = (
         "document indicator",
         _Advice("the quote opened here is never closed", "close the quote", True),
     ),
-    (
-        "could not find expected ':'",
-        _Advice("a key without its `:`", "write `key: value`; indent what continues the line above", True),
-    ),
+    ("could not find expected ':'", _NO_COLON),
     (
         "mapping values are not allowed",
         _Advice(
             "a `:` where no `key: value` can stand",
-            "put text that holds `: ` in quotes; write a space after the `:` of the line above; "
-            "indent the keys of one mapping alike",
+            "put a text with `: ` in quotes; indent the keys of one mapping alike",
         ),
     ),
     (
@@ -46,13 +48,15 @@ _ADVICE: tuple[tuple[str, _Advice], ...] = (
     ),
     (
         "did not find expected '-' indicator",
-        _Advice("not indented like the list above", "indent every `- ` of one list alike"),
+        _Advice(
+            "not indented like the list above", "indent the `- ` of one list alike, and the keys of one entry"
+        ),
     ),
     (
         "did not find expected key",
         _Advice(
-            "no key of the mapping that begins at {begin}",
-            "indent the keys of one mapping alike; let nothing follow a closed quote",
+            "not a part of the mapping that begins at {begin}",
+            "indent the keys of one mapping alike; let nothing follow a closed quote or bracket",
         ),
     ),
     (
@@ -109,6 +113,8 @@ def syntax_diagnostic(error: Any, text: str, file: str) -> Diagnostic:
         unforeseen = f"not valid YAML {context}: {problem}".replace(" :", ":")
         known = (advice for part, advice in _ADVICE if part in problem)
         advice = next(known, _Advice(unforeseen.replace("{", "{{").replace("}", "}}"), _DEFAULT_HINT))
+    if "mapping values are not allowed" in problem and (above := _line_without_colon(text, broke[0])):
+        advice, began = _NO_COLON, above
     line, column = _inside(text, *(began if advice.at_begin else broke))
     begin = f"line {began[0] + 1}, column {began[1] + 1}"
     message = advice.message.format(sign=repr(sign), begin=begin)
@@ -117,11 +123,11 @@ def syntax_diagnostic(error: Any, text: str, file: str) -> Diagnostic:
 
 def unreadable_diagnostic(message: str, text: str, file: str) -> Diagnostic:
     """Return the finding for text with a character that YAML does not allow."""
-    at = next((i for i, c in enumerate(text) if not (c.isprintable() or c in "\n\r\t")), None)
-    if at is None:
+    found = _FORBIDDEN.search(text)
+    if found is None:
         told, at = "not valid YAML: " + " ".join(message.split())[:120], 0
     else:
-        told = f"the character U+{ord(text[at]):04X} cannot stand in YAML"
+        told, at = f"the character U+{ord(found.group()):04X} cannot stand in YAML", found.start()
     return Diagnostic("FP104", told, "is this a flow file?", span=span_at(text, at, file))
 
 
@@ -133,6 +139,18 @@ def span_at(text: str, index: int, file: str) -> Span:
 
 def _position(mark: Any) -> tuple[int, int] | None:
     return None if mark is None else (mark.line, mark.column)
+
+
+def _line_without_colon(text: str, line: int) -> tuple[int, int] | None:
+    """Return the begin of the line above, when it is the one that lacks ``: ``."""
+    lines = _LINE_END.split(text)
+    above = next((i for i in range(line - 1, -1, -1) if lines[i].strip()), None)
+    if above is None:
+        return None
+    content = lines[above].strip()
+    if content[0] in "#-" or ": " in content or content.endswith(":"):
+        return None
+    return above, len(lines[above]) - len(lines[above].lstrip())
 
 
 def _inside(text: str, line: int, column: int) -> tuple[int, int]:

@@ -27,7 +27,7 @@ def write_atomically(file: str | os.PathLike[str], content: str | bytes) -> None
     raw = content.encode("utf-8") if isinstance(content, str) else content
     try:
         target = _target(file)
-        if target.exists() and not target.is_file():
+        if _is_stream(target):
             target.write_bytes(raw)  # a device or a pipe is written to, never replaced
         else:
             _replace(target, raw)
@@ -47,17 +47,26 @@ def refuse_unwritable(file: str | os.PathLike[str]) -> None:
         target = _target(file)
         if not target.exists():
             target.parent.stat()
-        if not os.access(target.parent, os.W_OK | os.X_OK):
+        allowed = (
+            os.access(target, os.W_OK) if _is_stream(target) else os.access(target.parent, os.W_OK | os.X_OK)
+        )
+        if not allowed:
             raise PermissionError(errno.EACCES, os.strerror(errno.EACCES))
     except (OSError, ValueError) as error:
         raise _refused(file, error) from None
 
 
 def _target(file: str | os.PathLike[str]) -> Path:
-    target = Path(file).resolve()
+    named = Path(file)
+    target = named if _is_stream(named) else named.resolve()
     if target.is_dir():
         raise IsADirectoryError(errno.EISDIR, "is a folder")
     return target
+
+
+def _is_stream(path: Path) -> bool:
+    """Whether a name stands for a device or a pipe, such as what ``/dev/stdout`` leads to."""
+    return path.exists() and not path.is_file() and not path.is_dir()
 
 
 def _refused(file: str | os.PathLike[str], error: OSError | ValueError) -> OutputError:

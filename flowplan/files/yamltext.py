@@ -4,7 +4,7 @@ import re
 from dataclasses import dataclass, field
 from typing import Any, NoReturn
 
-from flowplan.errors import Diagnostic, FlowError, Path, Span
+from flowplan.errors import Diagnostic, FlowError, Path, Span, in_brief
 from flowplan.files.nodes import MOST_DEPTH, MOST_NODES, Node, compose
 from flowplan.files.syntax import syntax_diagnostic, unreadable_diagnostic
 
@@ -21,11 +21,12 @@ _LONGEST_INTEGER = 300
 
 @dataclass(slots=True)
 class Places:
-    """Where keys and values stand in a text, by their path in the data."""
+    """Where keys and values stand in a text, by their path in the data; what is wrong with the text."""
 
     file: str
     keys: dict[Path, tuple[int, int]] = field(default_factory=dict)
     values: dict[Path, tuple[int, int]] = field(default_factory=dict)
+    problems: list[Diagnostic] = field(default_factory=list)
 
     def span(self, path: Path, *, of_key: bool = False) -> Span:
         """Return the place of the deepest part of a path that stands in the text.
@@ -66,7 +67,8 @@ def read_yaml(text: str, file: str) -> tuple[Any, Places]:
     data : dict, list, str, int, float, bool or None
         Plain data.
     places : Places
-        The place of every key and value.
+        The place of every key and value, and the problems that leave the rest readable: keys that
+        stand twice, of which the first counts, and tags, which are passed over.
 
     Raises
     ------
@@ -76,8 +78,8 @@ def read_yaml(text: str, file: str) -> tuple[Any, Places]:
     builder = _Builder(Places(file))
     root = _compose(text, file)
     data = None if root is None else builder.value(root, (), 0)
-    if builder.problems:
-        raise FlowError(builder.problems)
+    if builder.is_incomplete:
+        raise FlowError(builder.places.problems)
     return data, builder.places
 
 
@@ -98,7 +100,7 @@ class _Builder:
     """Turns composed nodes into plain data and keeps their places."""
 
     places: Places
-    problems: list[Diagnostic] = field(default_factory=list)
+    is_incomplete: bool = False
     open_nodes: set[int] = field(default_factory=set)
     count: int = 0
 
@@ -127,10 +129,12 @@ class _Builder:
         for key_node, value_node in zip(node.value[::2], node.value[1::2], strict=True):
             if key_node.kind != "scalar":
                 self._note("FP109", "a key must be a plain text", "write `key: value`", key_node)
+                self.is_incomplete = True
                 continue
             key = key_node.value
             if key == "<<" and not key_node.quoted:
                 self._note("FP109", "merge keys are not used in a flow file", "write the keys out", key_node)
+                self.is_incomplete = True
                 continue
             place = (*path, key)
             if key in result:
@@ -143,7 +147,8 @@ class _Builder:
         return result
 
     def _note(self, code: str, message: str, hint: str, node: Node) -> None:
-        self.problems.append(Diagnostic(code, message, hint, span=node.span(self.places.file)))
+        finding = Diagnostic(code, message, hint, span=node.span(self.places.file))
+        self.places.problems.append(in_brief(finding))
 
     def _stop(self, code: str, message: str, hint: str, node: Node) -> NoReturn:
         raise FlowError([Diagnostic(code, message, hint, span=node.span(self.places.file))])

@@ -117,8 +117,10 @@ def _written(quantity: Quantity) -> float | str:
 AnyQuantity = Annotated[Quantity, _QuantityAnnotation]
 
 
-def require_dimension(quantity: Quantity, dimension: Dimension, what: str = "a length") -> Quantity:
-    """Return the quantity, or refuse its unit.
+def require_dimension(
+    quantity: Quantity, dimension: Dimension, what: str = "a length", key: str = ""
+) -> Quantity:
+    """Return the quantity, or refuse its unit, pointing at a key of what holds it.
 
     Raises
     ------
@@ -128,7 +130,9 @@ def require_dimension(quantity: Quantity, dimension: Dimension, what: str = "a l
     if quantity.dimension != dimension:
         fitting = ", ".join(name for name, (d, _) in UNITS.items() if d == dimension)
         given = quantity.unit or "a bare number (a length)"
-        raise refuse("FP402", f"{what} is wanted, {given} does not fit", f"units that fit: {fitting}")
+        raise refuse(
+            "FP402", f"{what} is wanted, {given} does not fit", f"units that fit: {fitting}", key=key
+        )
     return quantity
 
 
@@ -136,10 +140,11 @@ def _length(quantity: Quantity) -> Quantity:
     return require_dimension(quantity, "length")
 
 
-def not_negative(quantity: Quantity) -> Quantity:
-    """Return the quantity, or refuse a negative one (FP206)."""
+def not_negative(quantity: Quantity, key: str = "") -> Quantity:
+    """Return the quantity, or refuse a negative one (FP206), pointing at a key of what holds it."""
     if quantity.value < 0:
-        raise refuse("FP206", f"{quantity} is negative", "a size is 0 or more; only offsets have a sign")
+        hint = "a size is 0 or more; only offsets have a sign"
+        raise refuse("FP206", f"{quantity} is negative", hint, key=key)
     return quantity
 
 
@@ -151,7 +156,7 @@ def _positive(quantity: Quantity) -> Quantity:
 
 Length = Annotated[AnyQuantity, AfterValidator(_length)]
 PositiveLength = Annotated[Length, AfterValidator(_positive)]
-NonNegativeLength = Annotated[Length, AfterValidator(not_negative)]
+NonNegativeLength = Annotated[Length, AfterValidator(lambda quantity: not_negative(quantity))]
 
 
 class PerAxis(Model):

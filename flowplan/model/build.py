@@ -10,7 +10,7 @@ from pydantic_core import ErrorDetails
 from flowplan.errors import CODES, Diagnostic, Path, nearest
 from flowplan.model.base import Described
 from flowplan.model.flow import Flow
-from flowplan.model.formwords import type_hint, without_echoes
+from flowplan.model.formwords import key_hint, type_hint, without_echoes
 
 #: Longest list of findings that still helps a reader.
 MOST_DIAGNOSTICS = 200
@@ -84,11 +84,14 @@ def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
     path = real_path(data, loc)
     context = detail.get("ctx", {})
     if kind in CODES:
-        key = context["key"]
-        return Diagnostic(kind, context["message"], context["hint"], (*path, key) if key else path)
+        value = follow(data, path)
+        if isinstance(value, dict) and context["key"] in value:
+            path = (*path, context["key"])
+        return Diagnostic(kind, context["message"], context["hint"], path)
     if kind == "extra_forbidden":
         known = _fields_at(loc[:-1])
-        return Diagnostic("FP201", f"unknown key {loc[-1]!r}", nearest(str(loc[-1]), known), path)
+        hint = key_hint(str(loc[-1]), known, follow(data, path))
+        return Diagnostic("FP201", f"unknown key {loc[-1]!r}", hint, path)
     if kind == "missing" and isinstance(loc[-1], int):
         return Diagnostic("FP205", "too few entries", _ENTRIES_HINT, path)
     if kind == "missing":
@@ -101,7 +104,8 @@ def _translate(detail: ErrorDetails, data: object) -> Diagnostic:
     if kind in ("too_short", "too_long", "string_too_short"):
         return Diagnostic("FP205", *_COUNT[kind], path)
     message = _WRONG_TYPE.get(kind, detail["msg"].lower())
-    return Diagnostic("FP203", message, type_hint(kind, follow(data, path)), path)
+    needed = [] if kind == "dict_type" else _fields_at(loc, needed=True)
+    return Diagnostic("FP203", message, type_hint(kind, follow(data, path), needed), path)
 
 
 _ENTRIES_HINT = "`between` names two layers"
@@ -112,14 +116,21 @@ _COUNT = {
 }
 
 
-def _fields_at(loc: Sequence[str | int]) -> list[str]:
-    """Return the keys that the model knows at an error location."""
+def _fields_at(loc: Sequence[str | int], *, needed: bool = False) -> list[str]:
+    """Return the keys that the model knows, or needs, at an error location."""
     current: Any = Flow
     for step in loc:
         current = _descend(current, step)
     members = [m for m in _members(current) if isinstance(m, type) and issubclass(m, BaseModel)]
     names = dict.fromkeys(name for model in members for name in model.model_fields)
+    if needed:
+        return [name for name in names if all(_needs(model, name) for model in members)]
     return sorted(names, key=lambda name: name in Described.model_fields)
+
+
+def _needs(model: type[BaseModel], name: str) -> bool:
+    field = model.model_fields.get(name)
+    return field is not None and field.is_required()
 
 
 def _descend(annotation: Any, step: str | int) -> Any:

@@ -6,13 +6,16 @@ a file is reported at once.
 
 from collections import Counter
 from collections.abc import Callable, Iterator
+from itertools import islice
 
 from flowplan.errors import Diagnostic, Path, nearest
 from flowplan.model.base import AXES, WAFER
+from flowplan.model.build import MOST_DIAGNOSTICS
 from flowplan.model.checklanding import resistance_limits_leave_room
 from flowplan.model.checkmarks import marks_fix_their_model, marks_have_room
 from flowplan.model.flow import Flow
 from flowplan.model.geometry import MOST_FIELDS, too_many_fields, whole_fields
+from flowplan.model.masks import Mask
 from flowplan.model.terms import KINDS, Term
 
 Rule = Callable[[Flow], Iterator[Diagnostic]]
@@ -29,9 +32,10 @@ def check(flow: Flow) -> tuple[Diagnostic, ...]:
     Returns
     -------
     tuple of Diagnostic
-        Errors and warnings in the order of the rules; paths lead into the file's data.
+        Errors and warnings in the order of the rules, at most `MOST_DIAGNOSTICS` of each; paths lead
+        into the file's data.
     """
-    return tuple(d for rule in RULES for d in rule(flow))
+    return tuple(d for rule in RULES for d in islice(rule(flow), MOST_DIAGNOSTICS))
 
 
 def _every_id(flow: Flow) -> Iterator[tuple[str, Path]]:
@@ -87,34 +91,40 @@ def _tools_exist(flow: Flow) -> Iterator[Diagnostic]:
             yield Diagnostic("FP309", message, "", ("tools", name), severity="warning")
 
 
+def _every_reading(mask: Mask) -> Iterator[tuple[Path, str]]:
+    """Yield every single reading, each with its place in the mask."""
+    for where, references in mask.every_reference():
+        for axis in AXES:
+            for k, reading in enumerate(references.on(axis)):
+                yield (*where, axis, k, "mask"), reading.mask
+
+
 def _references_are_earlier(flow: Flow) -> Iterator[Diagnostic]:
     everything = [name for name, _ in _every_id(flow)]
     twice = {name for name, count in Counter(everything).items() if count > 1}
     order = {name: i for i, name in enumerate(flow.layers)}
     for i, mask in enumerate(flow.masks):
-        for where, references in mask.every_reference():
-            for axis in AXES:
-                for k, reading in enumerate(references.on(axis)):
-                    path: Path = ("masks", i, *where, axis, k, "mask")
-                    known = order.get(reading.mask)
-                    if {mask.id, reading.mask} & twice and reading.mask in everything:
-                        continue  # which of the two is meant cannot be told
-                    if reading.mask == WAFER or (known is not None and known < order.get(mask.id, 0)):
-                        continue
-                    earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
-                    yield _bad_reference(mask.id, reading.mask, everything, earlier, flow, path)
+        for where, reads in _every_reading(mask):
+            known = order.get(reads)
+            if {mask.id, reads} & twice and reads in everything:
+                continue  # which of the two is meant cannot be told
+            if reads == WAFER or (known is not None and known < order.get(mask.id, 0)):
+                continue
+            earlier = [WAFER, *list(flow.layers)[: order.get(mask.id, 0)]]
+            yield _bad_reference(mask.id, reads, everything, earlier, flow, ("masks", i, *where))
 
 
 def _bad_reference(
     mask: str, reads: str, everything: list[str], earlier: list[str], flow: Flow, path: Path
 ) -> Diagnostic:
+    aligns = "may align" if path[2] == "may_align_to" else "aligns"
     if reads == mask:
-        return Diagnostic("FP303", f"{mask!r} aligns to itself", nearest(reads, earlier), path)
+        return Diagnostic("FP303", f"{mask!r} {aligns} to itself", nearest(reads, earlier), path)
     if reads in flow.split_layers:
         hint = "name one of " + ", ".join(flow.split_layers[reads])
         return Diagnostic("FP301", f"{reads!r} is a split layer and has no mark of its own", hint, path)
     if reads in everything:
-        message = f"{mask!r} aligns to {reads!r}, which does not exist yet at that point"
+        message = f"{mask!r} {aligns} to {reads!r}, which does not exist yet at that point"
         return Diagnostic("FP303", message, "only earlier layers can be read: " + ", ".join(earlier), path)
     return Diagnostic("FP301", f"unknown mask {reads!r}", nearest(reads, earlier), path)
 
@@ -133,7 +143,7 @@ def _features_follow_layers(flow: Flow) -> Iterator[Diagnostic]:
 
 
 def _split_layers_exist(flow: Flow) -> Iterator[Diagnostic]:
-    known = [name for name, _ in _every_id(flow) if name not in flow.split_layers]
+    known = [mask.id for mask in flow.masks] + [feature.id for feature in flow.self_aligned]
     for name, members in flow.split_layers.items():
         if not members:
             message = f"the split layer {name!r} has no mask"
@@ -163,6 +173,7 @@ def pair_layer_paths(flow: Flow, index: int) -> tuple[Path, Path]:
 
 def _pairs_name_layers(flow: Flow) -> Iterator[Diagnostic]:
     known = [name for name, _ in _every_id(flow)]
+    twice = {name for name, count in Counter(known).items() if count > 1}
     names = Counter[str]()
     for i, pair in enumerate(flow.pairs):
         names[pair.name] += 1
@@ -171,10 +182,10 @@ def _pairs_name_layers(flow: Flow) -> Iterator[Diagnostic]:
             message = f"the pair name {pair.name!r} is used twice"
             yield Diagnostic("FP302", message, hint, ("pairs", i, "name"))
         for layer, path in zip(pair.layers, pair_layer_paths(flow, i), strict=True):
-            if layer not in known:
+            if flow.masks and layer not in known:
                 yield Diagnostic("FP301", f"unknown layer {layer!r}", nearest(layer, known), path)
         first, second = (flow.expand(layer) for layer in pair.layers)
-        if set(first) & set(second):
+        if set(first) & set(second) and not twice & set(pair.layers):
             both = pair_layer_paths(flow, i)[1]
             message = f"{pair.name!r} pairs {pair.layers[1]!r} with itself"
             yield Diagnostic("FP305", message, "name two different layers", both)

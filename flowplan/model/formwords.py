@@ -1,9 +1,29 @@
 """Words for errors of form: what to write instead of a wrong type, and which errors only echo another."""
 
-from flowplan.errors import Diagnostic
+from collections.abc import Sequence
+
+from flowplan.errors import Diagnostic, nearest
 
 
-def type_hint(kind: str, given: object) -> str:
+def key_hint(key: str, known: Sequence[str], value: object) -> str:
+    """Return what to do about an unknown key.
+
+    Parameters
+    ----------
+    key : str
+        What was written.
+    known : sequence of str
+        The keys that may stand there.
+    value : object
+        What stands after it; nothing, where a list in braces lacks its brackets.
+    """
+    hint = nearest(key, known)
+    if value is None:
+        return f"several values need brackets: `[A, B]`; otherwise: {hint}"
+    return hint
+
+
+def type_hint(kind: str, given: object, needed: Sequence[str] = ()) -> str:
     """Return what to do about a value of the wrong type.
 
     Parameters
@@ -12,6 +32,8 @@ def type_hint(kind: str, given: object) -> str:
         What the model wanted, in pydantic's words, such as ``dict_type``.
     given : object
         What stands there.
+    needed : sequence of str
+        The keys that a mapping there must have.
 
     Returns
     -------
@@ -23,11 +45,13 @@ def type_hint(kind: str, given: object) -> str:
     if kind == "string_type":
         return "write one text" if isinstance(given, dict | list) else "put it in quotes"
     if kind in ("tuple_type", "list_type"):
-        dashes = "begin each entry with a dash and give it its `id:`" if isinstance(given, dict) else ""
-        return dashes or "write `[…]`, or a dash before each entry"
+        if isinstance(given, dict):
+            return "begin each entry with a dash: `- {key: value}`"
+        return "write `[…]`, or a dash before each entry"
     if isinstance(given, list):
         return "write `name: …` without a dash"
-    return "write `{key: value}`, or the keys below, indented"
+    keys = ", ".join(f"{key}: …" for key in needed) or "key: value"
+    return f"write `{{{keys}}}`, or the keys below, indented"
 
 
 def without_echoes(findings: tuple[Diagnostic, ...]) -> tuple[Diagnostic, ...]:

@@ -26,7 +26,11 @@ class Reading(Model):
     @model_validator(mode="before")
     @classmethod
     def _from_id(cls, value: object) -> object:
-        return {"mask": value} if isinstance(value, str) else value
+        if isinstance(value, str):
+            return {"mask": value}
+        if not isinstance(value, dict | Reading):
+            raise refuse("FP203", "a mask's id belongs here", "name an earlier mask, or wafer")
+        return value
 
     @classmethod
     def __get_pydantic_json_schema__(

@@ -51,8 +51,8 @@ class Salvaged:
         """Whether a finding about the remainder only follows from what was taken out."""
         if finding.code in _FROM_PARTS and self.lost_parts & _FROM_PARTS[finding.code]:
             return True
-        if finding.code == "FP205" and finding.path == ("tools",):
-            return bool(self.lost_parts & {"tools"} or self.dropped)
+        if finding.code == "FP205" and finding.path in (("tools",), ("masks",)):
+            return bool(self.dropped) or self.nameless
         if self.nameless and finding.code == "FP301" and finding.path[-1:] != ("tool",):
             return True
         return any(repr(name) in finding.message for name in self.dropped)
@@ -153,6 +153,6 @@ def _drop_entry(data: object, entry: Path, result: Salvaged) -> None:
         result.kept[str(entry[0])].pop(name)
         given = item.get("id") if isinstance(item, dict) else item
         if isinstance(given, str):
-            result.dropped.add(given)
+            result.dropped |= {given, given.strip()}
         elif entry[0] in ("masks", "self_aligned"):
             result.nameless = True

@@ -99,9 +99,9 @@ class SizeParts(Model):
             raise refuse("FP202", "no size is given", "give one of " + ", ".join(KINDS))
         for kind, size in parts:
             for axis in AXES:
-                require_dimension(size.on(axis), dimension, what)
+                require_dimension(size.on(axis), dimension, what, kind)
                 if kind != "offset":
-                    not_negative(size.on(axis))
+                    not_negative(size.on(axis), kind)
 
 
 class Size(SizeParts):
@@ -149,6 +149,7 @@ class Term(SizeParts, Described):
                         "FP405",
                         f"{kind}: a {self.shape} is one number for both axes",
                         "give a single value, or use shape: scale for a factor on each axis",
+                        key=kind,
                     )
         return self
 

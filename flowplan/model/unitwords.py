@@ -5,6 +5,7 @@ from flowplan.units import UNITS, UnitError
 
 _MEANT = {
     "micron": "um", "microns": "um", "micrometer": "um", "micrometre": "um", "mu": "um", "u": "um",
+    "\N{MICRO SIGN}": "um", "\N{GREEK SMALL LETTER MU}": "um",
     "nanometer": "nm", "nanometre": "nm", "n": "nm",
     "millimeter": "mm", "millimetre": "mm", "centimeter": "cm", "centimetre": "cm",
     "inch": "in", "inches": "in", '"': "in", "microrad": "urad", "microradian": "urad",
@@ -13,7 +14,7 @@ _MEANT = {
 _WORTH = {
     "\N{LATIN CAPITAL LETTER A WITH RING ABOVE}": "0.1 nm", "\N{ANGSTROM SIGN}": "0.1 nm", "a": "0.1 nm",
     "angstrom": "0.1 nm", "pm": "0.001 nm", "m": "1000 mm", "mil": "0.001 in", "rad": "1000 mrad",
-    "nrad": "0.001 urad", "%": "10000 ppm",
+    "nrad": "0.001 urad",
 }  # fmt: skip
 
 

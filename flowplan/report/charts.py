@@ -7,9 +7,9 @@ from flowplan.engine.graph import Chain
 from flowplan.report.tree import cut
 
 _BOX_W, _BOX_H, _STEP = 148, 30, 66
-_LEFT, _MIDDLE, _RIGHT = 90, 210, 330
+_LEFT, _MIDDLE, _RIGHT = 100, 220, 340
 #: A chain of one branch needs room for its boxes and for a label beside the line.
-_WIDTH, _SINGLE = 420, 190
+_WIDTH, _SINGLE = 440, 190
 #: A box holds so many characters of an id.
 _FITS = 17
 #: A bar that runs past its end is cut at this share of its length.

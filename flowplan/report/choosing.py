@@ -19,6 +19,8 @@ LADDER_LIMIT = 20.0
 _EACH = 2
 #: Pairs whose remedies a report lists; the command lists all.
 _MOST_CASES = 12
+#: In a flow beyond this the search takes minutes, and is left to the command.
+_MOST_MASKS, _MOST_ENTRIES = 100, 1000
 
 Progress = Callable[[int, int], None]
 
@@ -52,9 +54,10 @@ def _variants(result: Result, variants: Mapping[str, Flow]) -> ComparisonText:
 def _remedies(result: Result, progress: Progress | None) -> RemediesText:
     """Return what helps the pairs with the least margin."""
     flow = result.flow
+    is_large = len(flow.masks) > _MOST_MASKS or len(result.entries) > _MOST_ENTRIES
     wanting = sorted((e for e in result.entries if e.verdict in ("fail", "tight")), key=result.margin)
     named = dict.fromkeys(e.pair.name for e in wanting[:_MOST_CASES])
-    found = remedies(flow, named, progress=progress) if named else None
+    found = remedies(flow, named, progress=progress) if named and not is_large else None
     cases = sorted(found.cases, key=lambda case: case.margin) if found else []
     words = [RemedyWords(found).case(case, _EACH) for case in cases[:_MOST_CASES]] if found else []
     return RemediesText(flow.unit, tuple(words), len(wanting) - len(words))

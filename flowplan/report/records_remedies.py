@@ -2,8 +2,8 @@
 
 from typing import Any
 
-from flowplan.engine.remedies_changes import Change, Redraw, Reread, Resize, SelfAlign
-from flowplan.engine.remedies_result import Case, Remedies, Remedy
+from flowplan.engine.remedies.changes import Change, Redraw, Reread, Resize, SelfAlign
+from flowplan.engine.remedies.result import Case, Remedies, Remedy
 from flowplan.model.base import Axis
 from flowplan.model.edits import Readings
 from flowplan.model.masks import References

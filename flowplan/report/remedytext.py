@@ -4,8 +4,8 @@ import math
 from collections import Counter
 from dataclasses import dataclass
 
-from flowplan.engine.remedies_changes import Change, Redraw, Reread, Resize, SelfAlign
-from flowplan.engine.remedies_result import Case, Remedies, Remedy
+from flowplan.engine.remedies.changes import Change, Redraw, Reread, Resize, SelfAlign
+from flowplan.engine.remedies.result import Case, Remedies, Remedy
 from flowplan.model.differences import readings_text
 from flowplan.report.levertext import rounded_down
 from flowplan.report.records_levers import in_own_unit, own_unit

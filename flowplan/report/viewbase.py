@@ -12,6 +12,7 @@ from flowplan.engine.results import Entry
 from flowplan.model.base import WAFER
 from flowplan.model.flow import Basis
 from flowplan.report.records import in_unit
+from flowplan.units import convert
 
 MINUS = "\N{MINUS SIGN}"
 NONE = "\N{EN DASH}"
@@ -65,6 +66,10 @@ class Base:
         return decimals_for(needs, in_unit(_FINEST_NM, unit) or 1.0)
 
     @cached_property
+    def _unit_nm(self) -> float:
+        return convert(1.0, self.result.flow.unit, "nm")
+
+    @cached_property
     def names(self) -> dict[str, LayerName]:
         """Every layer, and the wafer, by id."""
         places = enumerate(self.result.flow.layers, start=1)
@@ -91,8 +96,9 @@ class Base:
 
     def length(self, nm: float | None) -> str:
         """Return a length in the file's unit, without the unit's name."""
-        value = in_unit(nm, self.result.flow.unit)
-        return NONE if value is None else number(value, self.decimals)
+        if nm is None or not math.isfinite(nm):
+            return NONE
+        return number(nm / self._unit_nm, self.decimals)
 
     def signed(self, nm: float | None) -> str:
         """Return a length with its sign, 0 without one."""

@@ -54,7 +54,7 @@ class _Sizes:
     share : ndarray, shape (n_groups, n_columns)
         Of the variance.
     members : ndarray of int, shape (n_groups,)
-        Sources in each that take part.
+        Sources in each that take part, in the column with the most.
     taking_part, group : ndarray of int, shape (n_taking_part,)
         Those sources, and the group of each.
     """
@@ -107,19 +107,19 @@ class BudgetBook:
     ) -> _Sizes:
         n, confidence = len(labels), self.base.result.flow.confidence
         error, share = np.zeros((n, len(entries))), np.zeros((n, len(entries)))
-        seen = np.zeros(len(places), dtype=bool)
+        seen, members = np.zeros(len(places), dtype=bool), np.zeros(n, dtype=np.int64)
         for column, entry in enumerate(entries):
             budget = entry.budget
             at = places[budget.index]
             seen[budget.index] = True
+            members = np.maximum(members, np.bincount(at, minlength=n))
             variance = np.bincount(at, budget.variance, n)
             fixed = np.where(budget.variance > 0, 0.0, self._fixed(budget.amount, budget.index))
             error[:, column] = confidence * np.sqrt(variance) + np.bincount(at, fixed, n)
             total = variance.sum()
             share[:, column] = variance / total if total else 0.0
         taking_part = np.flatnonzero(seen)
-        group = places[taking_part]
-        return _Sizes(error, share, np.bincount(group, minlength=n), taking_part, group)
+        return _Sizes(error, share, members, taking_part, places[taking_part])
 
     def _fixed(self, amount: FloatArray, index: IntArray) -> FloatArray:
         """Return bounds by size and offsets with their sign [nm]."""

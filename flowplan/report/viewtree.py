@@ -15,16 +15,18 @@ _COMMENT = re.compile(r"<!--.*?-->\s*|<title>.*?</title>\s*", re.DOTALL)
 _SHIFT = re.compile(r"translate\(\S+ (\S+)\)")
 _NODE = re.compile(r'class="node (?!step).*?</g>', re.DOTALL)
 _TEXT = re.compile(r'<text [^>]*? y="(\S+?)"')
-#: A drawing up to the first height is shrunk to one printed page, a taller one is cut to the second [pt].
-_ONE_PAGE, _PAGE = 1000, 700
-#: How far a box reaches above and below its lines of text [pt].
+#: A printed page holds so much of a drawing [px]; what is wider is shrunk to it.
+_PAGE_WIDTH, _PAGE_HEIGHT = 695, 810
+#: A drawing that must not shrink further than this stands whole on one page.
+_SMALLEST = 0.7
+#: How far a box reaches above and below its lines of text [px].
 _ABOVE, _BELOW = 18, 12
 _SIZE = re.compile(r'<svg width="(\d+)pt" height="(\d+)pt"')
 
 
 @dataclass(frozen=True, slots=True)
 class PageSlice:
-    """A part of the drawing from `top` down, over its whole width [pt]."""
+    """A part of the drawing from `top` down, over its whole width [px]."""
 
     top: int
     width: int
@@ -87,18 +89,19 @@ def page_slices(svg: str) -> tuple[PageSlice, ...]:
         Graphviz's drawing of the tree, its y axis shifted so that the drawing's foot is 0.
     """
     size, shift = _SIZE.search(svg), _SHIFT.search(svg)
-    if size is None or shift is None or int(size[2]) <= _ONE_PAGE:
+    if size is None or shift is None or int(size[2]) <= _PAGE_HEIGHT / _SMALLEST:
         return ()
     width, height = int(size[1]), int(size[2])
+    page = _PAGE_HEIGHT * max(1.0, width / _PAGE_WIDTH)
     gaps = _gaps(sorted({_row_of(node, float(shift[1])) for node in _NODE.findall(svg)}))
-    n = math.ceil(height / _PAGE)
+    n = math.ceil(height / page)
     wanted = (height * i / n for i in range(1, n))
     cuts = {min(gaps, key=lambda gap: abs(gap - want)) for want in wanted} if gaps else set()
     return tuple(PageSlice(round(a), width, round(b - a)) for a, b in pairwise([0, *sorted(cuts), height]))
 
 
 def _gaps(rows: Sequence[tuple[float, float]]) -> list[float]:
-    """Return the middles of the gaps between rows of boxes [pt]."""
+    """Return the middles of the gaps between rows of boxes [px]."""
     found, foot = [], rows[0][1] if rows else 0.0
     for top, bottom in rows:
         if top > foot:
@@ -108,7 +111,7 @@ def _gaps(rows: Sequence[tuple[float, float]]) -> list[float]:
 
 
 def _row_of(node: str, shift: float) -> tuple[float, float]:
-    """Return the top and bottom of a layer's box, from its lines of text [pt]."""
+    """Return the top and bottom of a layer's box, from its lines of text [px]."""
     lines = [float(y) + shift for y in _TEXT.findall(node)]
     return min(lines) - _ABOVE, max(lines) + _BELOW
 

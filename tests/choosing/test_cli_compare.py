@@ -165,6 +165,11 @@ def test_nothing_to_compare_with(cli, plain):
     assert "--self-align" in ended.err
 
 
+def test_check_names_the_variants(cli, file):
+    assert "  variants  direct, implant\n" in cli("check", file).out
+    assert "variants" not in cli("check", file, "--variant", "direct").out
+
+
 def test_unknown_variant(cli, file):
     for command in ("check", "margins", "tree", "report", "compare"):
         ended = cli(command, file, "--variant", "dirct")

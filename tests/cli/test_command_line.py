@@ -161,3 +161,43 @@ def test_a_warning_on_a_terminal_is_in_colour(tmp_path, flow):
     text = (tmp_path / flow).read_text().replace("tools:", "tools:\n  spare: {}")
     (tmp_path / "spare.yaml").write_text(text)
     assert "\x1b[33mwarning: " in on_a_terminal(*FLOWPLAN, "check", "spare.yaml", cwd=tmp_path)
+
+
+@pytest.mark.parametrize(
+    ("closed", "status", "told"),
+    [
+        ("check - <&-", 2, "<stdin>:1:1: standard input is closed [FP101]"),
+        ("check four.yaml >&-", 2, "flowplan: standard output is closed [FP501]"),
+        ("check four.yaml --format json >&-", 2, "flowplan: standard output is closed [FP501]"),
+        ("check none.yaml 2>&-", 2, ""),
+    ],
+)
+def test_a_closed_stream_is_told_where_it_can_be(tmp_path, flow, closed, status, told):
+    shell = f"{sys.executable} -m flowplan {closed}"
+    done = subprocess.run(["bash", "-c", shell], cwd=tmp_path, capture_output=True, text=True, check=False)
+    assert (done.returncode, done.stdout) == (status, "")
+    assert (done.stderr.splitlines() or [""])[0] == told
+
+
+def test_a_shell_may_hand_over_the_flow_through_a_pipe(tmp_path, flow):
+    shell = f"{sys.executable} -m flowplan check <(cat {flow})"
+    done = subprocess.run(["bash", "-c", shell], cwd=tmp_path, capture_output=True, text=True, check=False)
+    assert (done.returncode, done.stderr) == (0, "")
+    assert ": sound\n" in done.stdout
+
+
+@pytest.mark.parametrize("output", ["none/out.svg", "folder.svg", "four.svg/out.svg"])
+@pytest.mark.parametrize(("command", "reader"), [("report", "open_flow"), ("tree", "read_flow")])
+def test_an_output_that_cannot_be_written_is_told_before_the_work(
+    run, flow, monkeypatch, command, reader, output
+):
+    def work(*_args, **_kwargs):
+        raise AssertionError("the flow was read first")
+
+    monkeypatch.setattr(f"flowplan.cli.{command}.{reader}", work)
+    Path("folder.svg").mkdir()
+    Path("four.svg").write_text("a file")
+    result = run(command, flow, "-o", output)
+    assert (result.exit_code, result.stdout) == (2, "")
+    assert result.stderr.startswith(f"flowplan: cannot write '{output}': ")
+    assert "hint: name a file in a folder that exists and can be written" in result.stderr

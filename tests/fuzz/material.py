@@ -138,7 +138,7 @@ def mutants(draw: st.DrawFn, most: int = 4) -> Any:
         if change == "delete":
             del parent[last]
         elif change == "replace":
-            parent[last] = draw(scalars | structures)
+            parent[last] = copy.deepcopy(draw(scalars | structures))
         elif change == "swap":
             parent[last] = copy.deepcopy(at(data, draw(st.sampled_from(known))))
         elif change == "wrap":
@@ -196,7 +196,7 @@ def work_out(loaded: Loaded) -> None:
     document = json.dumps(analysis.to_document(), allow_nan=False)
     assert len(json.loads(document)["margins"]) == len(analysis.entries)
     assert len(tree_lines(flow)) == len(flow.layers) + 1
-    first, last = list(flow.layers)[0], list(flow.layers)[-1]
+    first, *_, last = [*flow.layers, *flow.layers]
     if first != last:
         engine = Engine.of(flow)
         explain(engine, first, last, "x")

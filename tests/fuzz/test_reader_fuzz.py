@@ -52,7 +52,7 @@ def test_any_text(text):
 
 
 @given(st.text(alphabet="{}[]:,-?&*!|>'\"%@`#~<=. \n\t\rab1", max_size=40))
-@fuzz(500)
+@fuzz(400)
 def test_text_of_the_signs_that_yaml_gives_a_meaning(text):
     read_and_use(text)
     read_and_use("flow: Estuary\nmasks: " + text)
@@ -80,13 +80,13 @@ def test_any_structure_under_the_keys_of_a_flow(data):
 
 
 @given(mutants())
-@fuzz(250)
+@fuzz(150)
 def test_a_flow_with_changes(data):
     read_and_use(as_yaml(data))
 
 
 @given(mutants(1))
-@fuzz(200)
+@fuzz(150)
 def test_a_flow_with_one_change(data):
     read_and_use(as_yaml(data))
 

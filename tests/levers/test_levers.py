@@ -107,6 +107,17 @@ def test_error_shared_with_another_mask_may_be_better_larger():
     assert lever(data, "masks.A.terms.s.bound").largest == pytest.approx(21, rel=1e-12)
 
 
+def test_slope_at_a_tie_is_the_one_towards_smaller_sizes():
+    """At 30 both pairs have 10 left; below, the pair of one hop is the worse, and its slope is -1."""
+    found = lever(chain((30 * math.sqrt(2) + 10, 40)), "tools.tool.alignment")
+    assert found.derivative == pytest.approx(-1)
+
+
+def test_slope_of_a_size_of_zero_is_the_one_towards_larger_sizes():
+    data = chain((40, 40), tools={"tool": {"alignment": 0}})
+    assert lever(data, "tools.tool.alignment").derivative == pytest.approx(-math.sqrt(2))
+
+
 def test_angle_keeps_its_unit_and_the_worst_corner_counts():
     # at the corner of a 20 mm field 0.5 urad is 5 nm along each axis
     data = bare_flow(

@@ -5,7 +5,7 @@ import math
 import numpy as np
 import pytest
 
-from flowplan.engine.levers_ramp import Ramp, Varying, largest
+from flowplan.engine.levers.ramp import Ramp, Varying, largest
 
 NONE = np.zeros((1, 1))
 

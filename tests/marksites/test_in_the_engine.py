@@ -10,7 +10,7 @@ from flowplan.engine.levers import levers
 from flowplan.engine.placement import place
 from flowplan.engine.propose import propose
 from flowplan.engine.remedies import remedies
-from flowplan.engine.remedies_changes import apply
+from flowplan.engine.remedies.changes import apply
 from flowplan.files.references import references_data
 from flowplan.model.differences import differences
 from flowplan.model.edits import with_size

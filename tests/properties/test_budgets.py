@@ -62,5 +62,5 @@ def test_an_explanation_is_taken_from_the_same_placements(data):
         if not entry.chain.one_of_several:
             by_hop = np.array([hop.overlay.random for hop in found.hops])
             assert found.entry.chain_rss == pytest.approx(
-                math.sqrt(sum(by_hop**2)), rel=1e-9, abs=1e-8 * scale_of(data, entry)
+                math.sqrt(sum(by_hop**2)), rel=1e-9, abs=1e-13 * scale_of(data, entry)
             )

@@ -6,8 +6,6 @@ import numpy as np
 
 from flowplan.engine.analysis import analyse
 
-SAME = 1e-9
-
 
 def judged(flow):
     """Return what each judged pair gets by the engine: margins and log(1 - fail probability)."""

@@ -51,11 +51,15 @@ def small_flow(seed, n_masks=None, most=4, shapes=None):
                 found["shape"]["common"] = r.choice([0, 0.5, 1])
         return found
 
-    tools = {f"T{k}": {"alignment": size(20, True), "wafer_alignment": 150, "terms": terms(True)} for k in range(2)}
+    tools = {
+        f"T{k}": {"alignment": size(20, True), "wafer_alignment": 150, "terms": terms(True)} for k in range(2)
+    }
     ids = [f"M{i}" for i in range(n)]
 
     def single(i):
-        return r.choice(["wafer", *ids[:i]]) if i and r.random() < 0.1 else (r.choice(ids[:i]) if i else "wafer")
+        return (
+            r.choice(["wafer", *ids[:i]]) if i and r.random() < 0.1 else (r.choice(ids[:i]) if i else "wafer")
+        )
 
     def form(i):
         kind = r.random()
@@ -112,6 +116,11 @@ def small_flow(seed, n_masks=None, most=4, shapes=None):
     return sound(data)
 
 
+def per_axis(r, low, high):
+    """Return a random length for each axis."""
+    return {axis: round(r.uniform(low, high), 2) for axis in "xy"}
+
+
 def large_flow(seed, n_masks=60, n_candidates=5, n_pairs=150, reach=8, tight=1.0):
     """Return a flow whose masks each have candidates among the `reach` masks before them."""
     r = random.Random(seed)
@@ -121,8 +130,8 @@ def large_flow(seed, n_masks=60, n_candidates=5, n_pairs=150, reach=8, tight=1.0
         earlier = ids[max(0, i - reach) : i]
         chosen = r.sample(earlier, min(n_candidates, len(earlier))) or ["wafer"]
         mask = {"id": name, "tool": r.choice(["T0", "T1", "T2"]), "aligns_to": chosen[0]}
-        mask |= {"cd": round(r.uniform(2, 10), 1), "mark_reading": round(r.uniform(1, 6), 2)}
-        mask["terms"] = {"writing": {"random": round(r.uniform(1, 5), 2), "enters": "pattern"}}
+        mask |= {"cd": per_axis(r, 2, 10), "mark_reading": per_axis(r, 1, 6)}
+        mask["terms"] = {"writing": {"random": per_axis(r, 1, 5), "enters": "pattern"}}
         if chosen[1:]:
             mask["may_align_to"] = chosen[1:]
         masks.append(mask)
@@ -131,7 +140,7 @@ def large_flow(seed, n_masks=60, n_candidates=5, n_pairs=150, reach=8, tight=1.0
         i = r.randrange(1, n_masks)
         j = r.randrange(max(0, i - reach), i)
         name = f"{ids[i]} on {ids[j]} {len(pairs)}"
-        drawn = round(r.uniform(25, 70) * tight, 1)
+        drawn = per_axis(r, 25 * tight, 70 * tight)
         pairs.append({"name": name, "rule": "enclosure", "outer": ids[j], "inner": ids[i], "drawn": drawn})
     tool = {"wafer_alignment": 500}
     tools = {

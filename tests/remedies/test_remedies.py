@@ -6,8 +6,8 @@ from typing import Any
 import pytest
 
 from flowplan.engine.remedies import remedies
-from flowplan.engine.remedies_changes import Redraw, Reread, Resize, SelfAlign, apply
-from flowplan.engine.remedies_result import Case, Remedy
+from flowplan.engine.remedies.changes import Redraw, Reread, Resize, SelfAlign, apply
+from flowplan.engine.remedies.result import Case, Remedy
 from flowplan.errors import UsageError
 from flowplan.model.differences import readings_text
 from flowplan.model.paths import quoted_sizes
@@ -154,6 +154,23 @@ def test_others_that_get_worse_and_that_break_are_counted():
     # D to C becomes 52 of 40; D to B stays at two hops.
     assert (found.failing, found.worse, found.breaks) == (1, 1, 1)
     assert found.worst == pytest.approx(40 - 30 * ROOT3)
+
+
+def test_what_failed_before_gets_worse_but_is_not_broken():
+    data = chain_of_four()
+    data["pairs"] += [overlay_pair("C", "D", limit=29, axes="x")]
+    case = next(c for c in remedies(flow_of(data)).cases if c.entry.pair.name == "A-D")
+    (step,) = of_kind(case, "self-align")
+    for remedy in (rereads(case)["D", "A"], step):
+        assert (remedy.effect.worse, remedy.effect.breaks) == (1, 0)
+
+
+def test_small_gain_is_a_gain():
+    data = chain_of_four()
+    data["masks"][1]["mark_reading"] = 1  # of 52 it takes a hundredth
+    found = {r.change.quoted.path: r for r in of_kind(only_case(data), "size")}
+    gain = found["masks.B.mark_reading"].margin - only_case(data).margin
+    assert gain == pytest.approx(math.sqrt(3 * 30**2 + 1) - math.sqrt(3 * 30**2))
 
 
 def test_best_comes_first():

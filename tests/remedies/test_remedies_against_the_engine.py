@@ -7,8 +7,8 @@ import pytest
 import flowplan
 from flowplan.engine.analysis import analyse
 from flowplan.engine.remedies import remedies
-from flowplan.engine.remedies_changes import Change, apply
-from flowplan.engine.remedies_result import KINDS
+from flowplan.engine.remedies.changes import Change, apply
+from flowplan.engine.remedies.result import KINDS
 from flowplan.model.check import check
 from flowplan.model.flow import Flow
 from flowplan.report.remedytext import best_of_each

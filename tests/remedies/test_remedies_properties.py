@@ -5,8 +5,8 @@ from hypothesis import given, settings
 
 from flowplan.engine.analysis import analyse
 from flowplan.engine.remedies import remedies
-from flowplan.engine.remedies_changes import apply
-from flowplan.engine.remedies_work import worth
+from flowplan.engine.remedies.changes import apply
+from flowplan.engine.remedies.work import worth
 from flowplan.report.records_remedies import remedies_document
 from flowplan.report.remedytext import best_of_each
 from tests.support.flows import flow_of

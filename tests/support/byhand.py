@@ -238,7 +238,10 @@ class ByHand:
         """D: the device pattern."""
         if layer in self._features:
             return self.device(self.parent(layer, axis), axis)
-        return self.printed(layer, axis) + self.entering(layer, "pattern", axis)
+        if ("D", layer, axis) not in self._known:
+            pattern = self.printed(layer, axis) + self.entering(layer, "pattern", axis)
+            self._known["D", layer, axis] = pattern
+        return self._known["D", layer, axis]
 
     def edge(self, layer: str, axis: str) -> Any:
         """E: one edge, outward positive."""

@@ -10,6 +10,7 @@ from flowplan.errors import (
     OutputError,
     Span,
     UsageError,
+    in_brief,
     nearest,
 )
 
@@ -71,3 +72,37 @@ def test_a_long_list_is_cut():
     known = [f"M{i:02}" for i in range(13)]
     assert nearest("zebra", known) == "known here: " + ", ".join(known[:12]) + ", …"
     assert nearest("zebra", known[:12]) == "known here: " + ", ".join(known[:12])
+
+
+class TestTextOfAnyLength:
+    def test_a_short_finding_stays_as_it_is(self):
+        finding = Diagnostic("FP301", "unknown mask 'GATF'", "did you mean 'GATE'?")
+        assert in_brief(finding) == finding
+
+    def test_a_long_quote_loses_its_middle(self):
+        found = in_brief(Diagnostic("FP301", f"unknown mask '{'A' * 50}{'B' * 950}'"))
+        assert found.message.startswith("unknown mask 'AAAA")
+        assert found.message.endswith("BBB'")
+        assert "…" in found.message
+        assert len(found.message) == len("unknown mask ") + 60
+
+    def test_a_long_message_without_quotes_is_cut_as_well(self):
+        assert len(in_brief(Diagnostic("FP301", "x" * 5000, "y" * 5000)).message) == 300
+
+
+class TestNearestAmongMany:
+    NAMES = tuple(f"LAYER{i}" for i in range(500))
+
+    def test_finds_one_among_hundreds(self):
+        assert nearest("LAYRE417", self.NAMES) == "did you mean 'LAYER417'?"
+
+    def test_lists_the_first_where_nothing_is_near(self):
+        hint = nearest("q", self.NAMES)
+        assert hint.startswith("known here: LAYER0, LAYER1, ")
+        assert hint.endswith("LAYER11, …")
+
+    def test_does_not_compare_a_word_without_end(self):
+        assert nearest("L" * 10_000, self.NAMES) == ""
+
+    def test_knows_nothing_where_nothing_is_known(self):
+        assert nearest("GATE", []) == ""

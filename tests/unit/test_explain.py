@@ -112,6 +112,18 @@ def test_a_bound_that_both_read_counts_twice_by_hand_and_not_at_all_exactly():
     assert (row.effect, row.apart, row.in_overlay) == ("cancels", 14, 0)
 
 
+def test_an_offset_that_both_inherit_is_listed_as_gone():
+    """Known and signed, so no hop adds it wrongly; it stands in both placements and in no overlay."""
+    masks = [
+        mask("A", terms={"stress": {"offset": -7}}),
+        mask("B", [{"mask": "A", "alignment": 3}]),
+        mask("C", [{"mask": "A", "alignment": 4}]),
+    ]
+    row = shared(explain(engine_of(masks), "B", "C", "x"), "stress")
+    assert (row.effect, row.in_first, row.in_second, row.in_overlay) == ("cancels", -7, -7, 0)
+    assert row.apart == 14
+
+
 def test_a_self_aligned_feature_follows_with_no_overlay_at_all():
     engine = engine_of(self_aligned=[{"id": "S", "follows": "B"}])
     explanation = explain(engine, "B", "S", "x")

@@ -132,7 +132,7 @@ class AxisAtoms:
     @property
     def n_sites(self) -> int:
         """Number of sites."""
-        return self.layer.sizes.shape[1]
+        return int(self.layer.sizes.shape[1])
 
     @cached_property
     def has_bounds(self) -> bool:
@@ -241,7 +241,7 @@ class _Builder:
         )
 
     def _shared_sources(self) -> list[int]:
-        """Sources other than offsets that enter at more than one place."""
+        """Return the sources other than offsets that enter at more than one place."""
         where = defaultdict(set)
         for (mask, part, axis), amounts in self.walk.parts.items():
             if axis == self.axis:

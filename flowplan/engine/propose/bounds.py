@@ -76,6 +76,7 @@ class AxisBounds:
         self.averaged = axis.most_read > 1
         rows = axis.rows
         self.late, self.early = np.maximum(rows.first, rows.second), np.minimum(rows.first, rows.second)
+        self.plain_rows = np.flatnonzero(~self.averaged[self.late] & (self.late != self.early))
         self.of_mask = [np.flatnonzero((self.late == i) & (self.early != i)) for i in range(axis.n_masks)]
 
     @property
@@ -88,7 +89,8 @@ class AxisBounds:
         """How much one node takes in memory."""
         n, width = self.axis.n_masks, int(self.axis.reads.count.max())
         per_way = len(self.power) + 2 * self.n_signed
-        return 2 * n * n * per_way + len(self.late) * width * (per_way + 8 * len(self.sites))
+        floats = 2 * n * n * per_way + len(self.late) * width * (per_way + 8 * len(self.sites))
+        return int(floats)
 
     def _flat(self, parts: Parts) -> Parts:
         """Keep the sizes and sites that count and lay them side by side."""
@@ -159,49 +161,70 @@ class AxisBounds:
             nodes, n, len(self.power), self.n_signed if self.is_signed else 0, marked=self.is_marked
         )
         least = self._least_own(allowed) if self.averaged.any() else None
-        barred = np.where(allowed, 0.0, np.inf)[..., None, None]
+        barred = np.where(allowed, 0.0, np.inf)[..., None]
+        own = self.layer.sizes[:, None] + self.reads.sizes
+        cost = (own + barred)[:, :, :, None]
         sizes = np.zeros((nodes, len(self.late), width, len(self.power)))
         low = high = np.zeros((nodes, len(self.late), width if self.is_signed else 1, self.n_signed))
         if self.is_signed:
             high = high.copy()
         for i in range(n):
             count = int(self.axis.reads.count[i])
-            if i:
-                ok = allowed[:, i, :count, None, None]
-                to_frame, to_marks = self._ways(t, least, i, count)
-                rows = self.of_mask[i]
-                sizes[:, rows, :count] = to_frame[:, :, self.early[rows]].swapaxes(1, 2)
-                to_frame += barred[:, i, :count]
-                t.to_frame[:, i, :i] = to_frame.min(axis=1) + self.marks.sizes[i]
+            if i and self.averaged[i]:
+                self._average(t, least, barred, i, count, sizes)
+            elif i:
+                one = self.axis.reads.masks[i, :count, 0]
+                least_frame = (t.to_frame[:, one, :i] + cost[:, i, :count]).min(axis=1)
+                t.to_frame[:, i, :i] = least_frame + self.marks.sizes[i] if self.is_marked else least_frame
+                t.to_frame[:, :i, i] = least_frame
                 if self.is_marked:
-                    to_marks += barred[:, i, :count]
-                    t.to_frame[:, :i, i] = to_marks.min(axis=1)
-                    t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = t.to_frame[:, :i, i] + self.marks.sizes[i]
-                else:
-                    t.to_frame[:, :i, i] = t.to_frame[:, i, :i]
-                if self.is_signed:
-                    self._signed(t, ok, i, count, rows, low, high)
-            t.to_frame[:, i, i] = self.marks.sizes[i]
+                    least_marks = (t.to_marks[:, one, :i] + cost[:, i, :count]).min(axis=1)
+                    t.to_frame[:, :i, i] = least_marks
+                    t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = least_marks + self.marks.sizes[i]
+            if i and self.is_signed:
+                ok = allowed[:, i, :count, None, None]
+                self._signed(t, ok, i, count, self.of_mask[i], low, high)
+            if self.is_marked:
+                t.to_frame[:, i, i] = self.marks.sizes[i]
             if self.is_signed:
                 t.low_frame[:, i, i] = t.high_frame[:, i, i] = self.marks.signed[i]
+        plain = self.plain_rows
+        late, early = self.late[plain], self.early[plain, None]
+        sizes[:, plain] = t.to_frame[:, self.axis.reads.masks[late, :, 0], early] + own[late]
         return t, sizes, low, high
 
+    def _average(
+        self,
+        t: _Tables,
+        least: FloatArray | None,
+        barred: FloatArray,
+        i: int,
+        count: int,
+        sizes: FloatArray,
+    ) -> None:
+        """Fill in a mask that may read an average."""
+        to_frame, to_marks = self._ways(t, least, i, count)
+        rows = self.of_mask[i]
+        sizes[:, rows, :count] = to_frame[:, :, self.early[rows]].swapaxes(1, 2)
+        to_frame = (to_frame + barred[:, i, :count, None]).min(axis=1)
+        to_marks = (to_marks + barred[:, i, :count, None]).min(axis=1)
+        t.to_frame[:, i, :i] = to_frame + self.marks.sizes[i]
+        t.to_frame[:, :i, i] = to_marks
+        t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = to_marks + self.marks.sizes[i]
+
     def _least_own(self, allowed: BoolArray) -> FloatArray:
-        """Least that each mask and its marks add wherever they take part, shape (n_nodes, n_masks, n_sizes)."""
+        """Return the least that each mask and its marks add wherever they take part."""
         reads = np.where(allowed[..., None], self.reads.sizes, np.inf).min(axis=2)
         return np.asarray(self.layer.sizes + self.marks.sizes + reads)
 
-    def _ways(self, t: _Tables, least: FloatArray, i: int, count: int) -> tuple[FloatArray, FloatArray]:
+    def _ways(
+        self, t: _Tables, least: FloatArray | None, i: int, count: int
+    ) -> tuple[FloatArray, FloatArray]:
         """Sizes of mask i against the frames and the marks of all earlier ones, by option."""
         masks, weights = self.axis.reads.masks[i, :count], self.axis.reads.weights[i, :count]
         own = (self.layer.sizes[i] + self.reads.sizes[i, :count])[:, None]
-        if not self.averaged[i]:
-            one = masks[:, 0]
-            to_frame = t.to_frame[:, one, :i]
-            to_frame += own
-            return to_frame, t.to_marks[:, one, :i] + own if self.is_marked else to_frame
         scale = weights[..., None] ** self.power
-        if self.averaged[:i].any():
+        if self.averaged[:i].any() and least is not None:
             later = masks[..., None] > np.arange(i)
             certain = np.einsum("okq,bokq,oke->boeq", scale, least[:, masks], later)
             single = (weights > 0).sum(axis=1) == 1
@@ -258,10 +281,10 @@ class AxisBounds:
             return self._chances(full, offset_low, offset_high)
         need = axis.need(full)
         offset = np.maximum(0.0, np.maximum(offset_low, -offset_high))
-        return settled(room - offset - need, scale + offset + need).min(axis=-1)
+        return np.asarray(settled(room - offset - need, scale + offset + need).min(axis=-1))
 
     def _chances(self, full: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
-        """The least chance of failure at any site; short of room, spread can bring it down to a half."""
+        """Return the best chances at any site; short of room, spread can bring failure down to a half."""
         sigma, bound = np.sqrt(full[..., VARIANCE]), full[..., BOUND]
         room, scale = self.axis.rows.room[:, None, None], self.axis.rows.scale[:, None, None]
         failure = np.zeros_like(sigma)
@@ -272,5 +295,5 @@ class AxisBounds:
 
 
 def _spread(n_sites: int) -> IntArray:
-    """A few sites, spread evenly over the rim."""
+    """Return a few sites, spread evenly over the rim."""
     return np.unique(np.linspace(0, n_sites - 1, min(_SITES, n_sites)).round().astype(np.int64))

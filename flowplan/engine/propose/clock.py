@@ -1,5 +1,6 @@
 """When to stop, and how far the search has come."""
 
+import math
 import time
 from dataclasses import dataclass, field
 
@@ -24,6 +25,8 @@ class Clock:
         Told how far the search has come; asked whether to stop.
     best, bound, closed, nodes
         As in `Progress`.
+    stopped : bool
+        Whether the search is over, not only this slice of it.
     """
 
     goal: Goal
@@ -35,6 +38,7 @@ class Clock:
     closed: float = 0.0
     nodes: int = 0
     stopped: bool = False
+    pause: float = math.inf
     _last: float = field(default_factory=time.monotonic)
 
     @classmethod
@@ -53,4 +57,8 @@ class Clock:
             self.watcher(Progress(self.goal, self.best, self.bound, self.closed, self.nodes))
         if (self.deadline is not None and now >= self.deadline) or (self.stopper and self.stopper()):
             self.stopped = True
-        return not self.stopped
+        return not self.stopped and now < self.pause
+
+    def slice(self, seconds: float) -> None:
+        """Say stop after some seconds, until a new slice is given."""
+        self.pause = time.monotonic() + seconds

@@ -62,11 +62,13 @@ def values(axis: AxisAtoms, plans: IntArray, *, as_yield: bool) -> FloatArray:
     sigma = np.sqrt(np.take_along_axis(sizes[..., VARIANCE], worst, axis=2)[..., 0])
     bound = np.take_along_axis(sizes[..., BOUND], worst, axis=2)[..., 0]
     offset = np.take_along_axis(offset, worst, axis=2)[..., 0]
-    failure = np.zeros_like(sigma)
-    for side in (1, -1):
-        left = settled(rows.room + side * offset - bound, rows.scale + bound + np.abs(offset))
-        failure += tails(left, sigma)
-    return log_chance(np.minimum(failure, 1.0))
+    left = np.stack([rows.room + side * offset - bound for side in (1, -1)])
+    left = settled(left, rows.scale + bound + np.abs(offset))
+    short, ample = left.min(axis=0), left.max(axis=0)
+    far = tails(ample, sigma)
+    with np.errstate(divide="ignore"):
+        good = np.log(np.maximum(tails(-short, sigma) - far, LEAST_CHANCE))  # no 1 - 1 where it fails
+    return np.where(short < 0, good, log_chance(tails(short, sigma) + far))
 
 
 def _residuals(axis: AxisAtoms, plans: IntArray) -> tuple[FloatArray, FloatArray]:

@@ -7,20 +7,24 @@ none, and mostly fast: the higher the aim, the fewer options are left. Then the 
 nothing is left that is better in that figure, and the next figure follows.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import numpy as np
 
 from flowplan.engine.propose.block import Block
+from flowplan.engine.propose.climb import climb
 from flowplan.engine.propose.clock import Clock
 from flowplan.engine.propose.prune import Best, Rules, narrow
 from flowplan.engine.propose.search import Node, Search, nodes_of
 from flowplan.engine.sources import BoolArray, FloatArray
 
 #: Aims taken at one figure.
-_AIMS = 6
+_AIMS = 8
 #: Nodes after which an aim is given up and started anew with what was learned, and at last given up.
 _SHORT = (60, 120, 240)
+#: Aims given up at one figure before the tree is searched.
+_GIVE_UP = 2
 #: Nodes after which the search of a level is started anew with what was learned; doubled each time.
 _LONG = 500
 #: Open nodes of which each is shaved.
@@ -45,6 +49,8 @@ class Solver:
         Nodes bounded.
     frontier : list of Node
         What is not settled.
+    tell : callable
+        Called whenever something new is known.
     """
 
     block: Block
@@ -53,12 +59,16 @@ class Solver:
     clock: Clock
     nodes: int = 0
     frontier: list[Node] = field(default_factory=list)
+    tell: Callable[[], None] = lambda: None
     _failures: FloatArray = field(default_factory=lambda: np.zeros(0))
 
-    def run(self, root: BoolArray) -> bool:
-        """Search all plans of a node, shape (n_variables, n_options); return whether the best is proved."""
+    def start(self, root: BoolArray) -> None:
+        """Begin with all plans of a node, shape (n_variables, n_options)."""
         self._failures = np.zeros(len(root))
         self.frontier = nodes_of(narrow(self.block, root[None], self.best, self.rules), np.ones(1))
+
+    def run(self) -> bool:
+        """Search what is left until the clock says stop; return whether the best is proved."""
         while self.frontier and self.clock():
             if len(self.frontier) <= _FEW:
                 self._shave()
@@ -66,7 +76,10 @@ class Solver:
                 level = min(self._gap(node.bound) for node in self.frontier)
                 if level < len(self.best.score):
                     self._aim(level)
-                self._settle(level)
+                    self._settle(level)
+                else:
+                    self._settle(None)
+            self.tell()
         return not self.frontier
 
     @property
@@ -102,46 +115,56 @@ class Solver:
         self.frontier = left
 
     def _gap(self, bound: FloatArray) -> int:
-        apart = np.abs(bound - self.best.score) > self.block.scale.same
+        apart = self.block.scale.apart(bound, self.best.score)
         return int(apart.argmax()) if apart.any() else len(apart)
 
     def _aim(self, level: int) -> None:
         """Close in on the best figure at a level from both sides."""
         high = max(node.bound[level] for node in self.frontier)
+        share, given_up = 0.5, 0
         for k in range(_AIMS):
             low = self.best.score[level]
-            if high - low <= self.block.scale.same or not self.clock():
+            if not self.block.scale.apart(high, low) or given_up > _GIVE_UP or not self.clock():
                 return
-            aim = low if k == _AIMS - 1 else (low + high) / 2
+            aim = low if k == _AIMS - 1 else low + share * (high - low)
             ended, better = self._try_aim(level, aim)
             if better is not None:
-                self.best = better
+                self.best = climb(self.block, better, self.rules)
             elif ended:
                 high = aim
             else:
-                return
+                share, given_up = share / 2, given_up + 1
 
     def _try_aim(self, level: int, aim: float) -> tuple[bool, Best | None]:
         """Look for a plan that is better than an aim; tell whether the search came to an end."""
         target = np.full(len(self.best.score), -np.inf)
         target[:level], target[level] = self.best.score[:level], aim
+        goal = Best(self.best.plan, target, self.best.changes)
+        roots = self.frontier
+        if len(roots) <= _FEW:
+            search = self._search(goal, np.inf)
+            roots = [
+                n for node in roots for n in nodes_of(search.shave(node.allowed), np.array([node.weight]))
+            ]
+            if search.found:
+                return False, search.best
         for most in _SHORT:
-            search = self._search(Best(self.best.plan, target, self.best.changes), most)
-            ended = search.run(self.frontier, first=True)
+            search = self._search(goal, most)
+            ended = search.run(roots, first=True)
             if search.found or ended:
                 break
         return ended, search.best if search.found else None
 
-    def _settle(self, level: int) -> None:
-        """Search until all that is left can only be better in a later figure."""
+    def _settle(self, level: int | None) -> None:
+        """Search until all that is left can only be better in a figure after this one."""
         most = _LONG
         while True:
             search = self._search(self.best, most)
             ended = search.run(self.frontier, level=level)
-            if ended or search.found or self.clock.stopped:
+            if ended or search.found or not self.clock():
                 break
             most *= 2
         left = search.left()
-        if search.found and not ended and len(self.frontier) <= _FEW < len(left):
+        if search.found and len(self.frontier) <= _FEW < len(left):
             left = self.frontier  # what was found prunes these better than the many left
         self.best, self.frontier = search.best, left

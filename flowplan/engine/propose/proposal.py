@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.analysis import Result
+from flowplan.engine.propose.exact import log_chance
 from flowplan.engine.propose.score import Goal
 from flowplan.engine.results import Verdict
 from flowplan.model.base import Axis
@@ -168,13 +169,12 @@ def figure(goal: Goal, result: Result) -> float:
     goal : {'worst', 'fails', 'yield'}
         What is wanted.
     result : Result
-        The margins of the plan; at least one pair is judged.
+        The margins of the plan; at least one pair is judged. In the sum of logarithms a pair that is
+        certain to fail counts as a chance of 1e-16 of being good, so that the sum stays finite.
     """
     judged = [e for e in result.entries if e.margin is not None]
     if goal == "fails":
         return float(sum(e.verdict == "fail" for e in judged))
     if goal == "worst":
         return min(result.margin(e) for e in judged)
-    failing = np.array([e.fail_probability for e in judged], dtype=np.float64)
-    with np.errstate(divide="ignore"):
-        return float(np.log1p(-failing).sum())
+    return float(log_chance(np.array([e.fail_probability for e in judged], dtype=np.float64)).sum())

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.propose.block import Block
-from flowplan.engine.propose.score import Groups
+from flowplan.engine.propose.score import Groups, Scale
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Pairs' values held at once while options are tried.
@@ -55,10 +55,21 @@ class Rules:
     ties : {'none', 'break', 'keep'}
         What becomes of plans as good as the best so far: none is wanted, those that come before it by
         fewest changes and file order, or all of them.
+    parts : tuple of (slice, ndarray)
+        Pairs with the best score that they can reach, where that is known already: then no plan is
+        better, and only plans that reach it in every part are as good.
     """
 
     limit: int | None
     ties: str
+    parts: tuple[tuple[slice, FloatArray], ...] = ()
+
+    def order(self, scale: Scale, rows: FloatArray, best: Best) -> IntArray:
+        """Return 1, 0 or -1 where what pairs reach is better than, as good as or worse than the best."""
+        if not self.parts:
+            return scale.compare(scale.scores(rows), best.score)
+        orders = [scale.compare(scale.scores(rows[:, part]), score) for part, score in self.parts]
+        return np.asarray(np.minimum(0, np.min(orders, axis=0)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -110,7 +121,7 @@ def narrow(block: Block, allowed: BoolArray, best: Best, rules: Rules) -> Narrow
     while len(work):
         before = allowed[work]
         some = _within_limit(block, before.copy(), rules)
-        ok = some.any(axis=2).all(axis=1)
+        ok = np.all(some.any(axis=2), axis=1)
         alive[work[~ok]] = False
         work, some, before = work[ok], some[ok], before[ok]
         if not len(work):
@@ -147,17 +158,19 @@ class _Step:
         scale = block.scale
         self.values, self.pivots = block.reach(allowed)
         groups = Groups(self.values, self.pivots, allowed.shape[1], scale)
-        self.grouped, self.options = groups.values, groups.best(allowed)
+        self.grouped, self.equal = groups.values, groups.best(allowed)
+        self.options = self.equal.argmax(axis=2)
         of_row = np.take_along_axis(self.options, self.pivots, axis=1)
         self.reach = np.take_along_axis(self.values, of_row[..., None], axis=2)[..., 0]
-        self.bound = scale.scores(self.reach)
-        order = scale.compare(self.bound, best.score)
+        order = rules.order(scale, self.reach, best)
+        known = np.repeat(best.score[None], len(allowed), axis=0)
+        self.bound = known if rules.parts else scale.scores(self.reach)
         self.alive = order > 0
         self.left = allowed.copy()
         if rules.ties != "none":
             self._ties(np.flatnonzero(order == 0))
         self._try_options(order)
-        self.alive &= self.left.any(axis=2).all(axis=1)
+        self.alive &= np.all(self.left.any(axis=2), axis=1)
 
     def _ties(self, nodes: IntArray) -> None:
         """Keep of nodes that can be as good as the best what comes before it in changes and order."""
@@ -176,17 +189,40 @@ class _Step:
     def _try_options(self, order: IntArray) -> None:
         """Take away the options with which a node would no longer be wanted."""
         tried = self._doubtful(order) & self.left & self.alive[:, None, None]
-        node, variable, option = np.nonzero(tried)
+        sure = self._surely_worse(order) & tried
+        self.left[sure] = False
+        node, variable, option = np.nonzero(tried & ~sure)
         step = max(1, _MOST_TRIED // self.reach.shape[1])
         for i in range(0, len(node), step):
             some = slice(i, i + step)
             self._try(node[some], variable[some], option[some])
 
+    def _surely_worse(self, order: IntArray) -> BoolArray:
+        """Return options that need no trial, shape (n_nodes, n_variables, n_options).
+
+        Of a node that is just as good as the best, each worse option of a group makes it worse. Another
+        agrees with the best up to a figure; an option of which more pairs fall short of that figure than
+        of the option taken brings the node below the best there.
+        """
+        scale, grouped = self.block.scale, self.grouped
+        if scale.goal == "yield":
+            return np.zeros(grouped.shape[:3], dtype=bool)
+        tied = order == 0
+        sure = np.zeros(grouped.shape[:3], dtype=bool)
+        sure[tied] = ~self.equal[tied]
+        if scale.goal == "worst" and not tied.all():
+            first = scale.apart(self.bound, self.best.score).argmax(axis=1)
+            least = self.best.score[first] - scale.same
+            short = (grouped < least[:, None, None, None]).sum(axis=3)
+            more = short > np.take_along_axis(short, self.options[..., None], axis=2)
+            sure[~tied] = more[~tied]
+        return sure
+
     def _try(self, node: IntArray, variable: IntArray, option: IntArray) -> None:
         scale = self.block.scale
         mine = self.pivots[node] == variable[:, None]
         rows = np.where(mine, self.values[node, :, option], self.reach[node])
-        order = scale.compare(scale.scores(rows), self.best.score)
+        order = self.rules.order(scale, rows, self.best)
         gone = order < (1 if self.rules.ties == "none" else 0)
         self.left[node[gone], variable[gone], option[gone]] = False
 
@@ -196,7 +232,7 @@ class _Step:
         taken = np.arange(self.grouped.shape[2]) == self.options[..., None]
         if scale.goal == "yield":
             return np.asarray(~taken)
-        apart = np.abs(self.bound - score) > scale.same
+        apart = scale.apart(self.bound, score)
         first = apart.argmax(axis=1)
         level = np.where(order == 0, np.inf, score[first] + scale.same)
         counted = first == 0 if scale.goal == "fails" else np.zeros(len(first), dtype=bool)

@@ -10,8 +10,9 @@ Each of these orders stays the same when the pairs of two groups are put togethe
 take its own best and the whole is still bounded. Pairs with the same pivot form a group: they share
 its choice.
 
-Margins are equal when they differ by no more than 1e-9 of the largest drawn dimension (sums of
-logarithms: by 1e-9); that is far above the rounding of the arithmetic and far below anything drawn.
+Margins are equal when they differ by no more than 1e-9 of the largest drawn dimension, sums of
+logarithms when they differ by no more than 1e-10, a tenth of a part per billion of the yield: far above
+the rounding of the arithmetic and far below what matters on a wafer.
 """
 
 from dataclasses import dataclass
@@ -28,6 +29,8 @@ GOALS: tuple[Goal, ...] = ("worst", "fails", "yield")
 _PADDING = 1e300
 #: Figures closer than this share of the largest drawn dimension are equal.
 _SAME = 1e-9
+#: Sums of logarithms closer than this are equal.
+_SAME_YIELD = 1e-10
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,7 +42,7 @@ class Scale:
     goal : {'worst', 'fails', 'yield'}
         What is wanted.
     same : float
-        Figures that differ by no more are equal.
+        Margins [nm], or sums of logarithms, that differ by no more are equal.
     """
 
     goal: Goal
@@ -48,7 +51,7 @@ class Scale:
     @classmethod
     def of(cls, goal: Goal, largest: float) -> "Scale":
         """Return the scale for pairs of which the largest is drawn this wide [nm]."""
-        return cls(goal, _SAME if goal == "yield" else _SAME * largest)
+        return cls(goal, _SAME_YIELD if goal == "yield" else _SAME * largest)
 
     def scores(self, values: FloatArray) -> FloatArray:
         """Return the scores of outcomes, shape (n_outcomes, n_figures); `values` by pair."""
@@ -63,11 +66,16 @@ class Scale:
         """Return how many margins are below 0."""
         return np.asarray((values < 0).sum(axis=-1), dtype=np.float64)
 
+    def apart(self, one: FloatArray, other: FloatArray) -> BoolArray:
+        """Return which figures, or values of pairs, differ by more than rounding."""
+        with np.errstate(invalid="ignore"):
+            return np.asarray(np.abs(one - other) > self.same)
+
     def compare(self, scores: FloatArray, other: FloatArray) -> IntArray:
         """Return for each score 1 where it is better than the other, 0 where equal, -1 where worse."""
         with np.errstate(invalid="ignore"):
             difference = scores - other
-        apart = np.abs(difference) > self.same
+        apart = self.apart(scores, other)
         first = apart.argmax(axis=-1)[..., None]
         signs = np.where(apart, np.sign(difference), 0)
         return np.take_along_axis(signs, first, -1)[..., 0].astype(np.int64)
@@ -100,8 +108,8 @@ class Groups:
         self.values = np.full((len(values), n_variables, values.shape[2], place.max() + 1), nothing)
         self.values[node, ordered, :, place] = values[node, order]
 
-    def best(self, allowed: BoolArray) -> IntArray:
-        """Return the best option of every variable, shape (n_nodes, n_variables); the first on a tie.
+    def best(self, allowed: BoolArray) -> BoolArray:
+        """Return which options of every variable none is better than, shape (n_nodes, n_variables, n_options).
 
         Parameters
         ----------
@@ -111,7 +119,7 @@ class Groups:
         grouped = self.values
         if self.scale.goal == "yield":
             total = np.where(allowed, grouped.sum(axis=3), -np.inf)
-            return (total >= total.max(axis=2, keepdims=True) - self.scale.same).argmax(axis=2)
+            return np.asarray(total >= total.max(axis=2, keepdims=True))
         alive = allowed.copy()
         if self.scale.goal == "fails":
             failing = np.where(alive, self.scale.fails(grouped), np.inf)
@@ -120,4 +128,4 @@ class Groups:
         for k in range(ordered.shape[3]):
             figure = np.where(alive, np.minimum(ordered[..., k], _PADDING), -np.inf)
             alive &= figure >= figure.max(axis=2, keepdims=True) - self.scale.same
-        return alive.argmax(axis=2)
+        return alive

@@ -220,12 +220,12 @@ class Search:
         return [node for node, o in zip(nodes, order, strict=True) if o >= least]
 
     def _beyond(self, bound: FloatArray, level: int) -> bool:
-        return bool((np.abs(bound - self.best.score)[: level + 1] <= self.block.scale.same).all())
+        return not self.block.scale.apart(bound, self.best.score)[: level + 1].any()
 
     def _branch(self, node: BoolArray, plan: IntArray, reach: FloatArray, value: FloatArray) -> int | None:
         """Return the variable to split, None when the node is solved."""
         gap = reach - value
-        down = gap > self.block.scale.same
+        down = self.block.scale.apart(reach, value) & (gap > 0)
         if self.block.as_yield:
             rows = np.argsort(-gap)[: int(down.sum())]
         else:

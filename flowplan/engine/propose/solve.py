@@ -5,7 +5,9 @@ must take both from one candidate or only so many masks may change. Only ties ne
 once, whichever axes change.
 """
 
+import math
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -18,6 +20,9 @@ from flowplan.engine.propose.score import Scale
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 from flowplan.model.base import AXES, Axis
 from flowplan.model.candidates import Choice
+
+#: Seconds of the first turn of each axis; every round takes twice as long.
+_FIRST_TURN = 4.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -84,18 +89,22 @@ class Problem:
         if limit is not None or not self.apart:
             return self._together(clock, best, limit, self.block.everything)
         solvers = [self._on_axis(clock, axis, plan) for axis in self.judged]
+        self._take_turns(clock, solvers)
         for axis, solver in zip(self.judged, solvers, strict=True):
             plan = plan.copy()
             plan[self.block.variables[axis.axis]] = solver.best.plan
         best = self._fewer_changes(Best.of(self.block, plan))
         if any(solver.frontier for solver in solvers):
             bound = self._merged([solver.bound for solver in solvers])
-            nodes, closed = sum(s.nodes for s in solvers), float(np.prod([s.closed for s in solvers]))
+            nodes, closed = sum(s.nodes for s in solvers), clock.closed
             return Solution(best.plan, best.score, False, bound, nodes, closed)
         root = self.block.everything
         for axis, solver in zip(self.judged, solvers, strict=True):
             root[self.block.variables[axis.axis]] &= self._as_good(solver)
-        found = self._together(clock, best, None, root)
+        rows = np.cumsum([0, *(len(axis.rows.room) for axis in self.judged)])
+        parts = tuple(slice(a, b) for a, b in pairwise(rows))
+        reached = tuple((part, s.best.score) for part, s in zip(parts, solvers, strict=True))
+        found = self._together(clock, best, None, root, reached)
         nodes = found.nodes + sum(s.nodes for s in solvers)
         return Solution(found.plan, found.score, found.proved, found.bound, nodes, found.closed)
 
@@ -104,8 +113,30 @@ class Problem:
         block = Block((axis,), choices, self.scale)
         start = Best.of(block, plan[self.block.variables[axis.axis]])
         solver = Solver(block, start, Rules(None, "none"), clock)
-        solver.run(block.everything)
+        solver.start(block.everything)
         return solver
+
+    def _take_turns(self, clock: Clock, solvers: list[Solver]) -> None:
+        """Let both axes search in turn, so that neither is left behind when time runs out."""
+
+        def tell() -> None:
+            clock.best = self._figure(self._merged([solver.best.score for solver in solvers]))
+            clock.bound = self._figure(self._merged([solver.bound for solver in solvers]))
+            clock.closed = sum(solver.closed for solver in solvers) / len(solvers)
+
+        for solver in solvers:
+            solver.tell = tell
+        tell()
+        turn = _FIRST_TURN
+        while any(solver.frontier for solver in solvers) and not clock.stopped:
+            for solver in solvers:
+                clock.slice(turn)
+                solver.run()
+            turn *= 2
+        clock.slice(math.inf)
+
+    def _figure(self, score: FloatArray) -> float:
+        return -float(score[0]) if self.scale.goal == "fails" else float(score[0])
 
     def _as_good(self, solver: Solver) -> BoolArray:
         """Return the options that plans as good as the best of an axis can take."""
@@ -115,9 +146,24 @@ class Problem:
         allowed[:, : options.shape[1]] = options
         return allowed
 
-    def _together(self, clock: Clock, best: Best, limit: int | None, root: BoolArray) -> Solution:
-        solver = Solver(self.block, best, Rules(limit, "break"), clock)
-        proved = solver.run(root)
+    def _together(
+        self,
+        clock: Clock,
+        best: Best,
+        limit: int | None,
+        root: BoolArray,
+        parts: tuple[tuple[slice, FloatArray], ...] = (),
+    ) -> Solution:
+        solver = Solver(self.block, best, Rules(limit, "break", parts), clock)
+
+        def tell() -> None:
+            clock.best, clock.bound = self._figure(solver.best.score), self._figure(solver.bound)
+            clock.closed = solver.closed
+
+        solver.start(root)
+        solver.tell = tell
+        tell()
+        proved = solver.run()
         found = solver.best if proved else self._fewer_changes(solver.best)
         return Solution(found.plan, found.score, proved, solver.bound, solver.nodes, solver.closed)
 

@@ -9,8 +9,8 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from flowplan.engine.levers_ramp import largest
-from flowplan.engine.levers_space import LeverSpace, Sized
+from flowplan.engine.levers.ramp import largest
+from flowplan.engine.levers.space import LeverSpace, Sized
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.errors import Diagnostic, UsageError, nearest
 from flowplan.model.flow import Flow

@@ -5,15 +5,15 @@ from collections.abc import Callable, Iterator
 from functools import cached_property
 
 from flowplan.engine.board import Board
-from flowplan.engine.levers_ramp import largest
-from flowplan.engine.levers_space import LeverSpace, Sized
+from flowplan.engine.levers.ramp import largest
+from flowplan.engine.levers.space import LeverSpace, Sized
 from flowplan.engine.margin import verdict_of
 from flowplan.engine.placement import place
-from flowplan.engine.remedies_changes import Change, Redraw, Reread, Resize, SelfAlign, apply
-from flowplan.engine.remedies_options import reread_options
-from flowplan.engine.remedies_reread import RereadSpace
-from flowplan.engine.remedies_rereads import rereads
-from flowplan.engine.remedies_result import Case, Effect, Kind, Remedy
+from flowplan.engine.remedies.changes import Change, Redraw, Reread, Resize, SelfAlign, apply
+from flowplan.engine.remedies.options import reread_options
+from flowplan.engine.remedies.reread import RereadSpace
+from flowplan.engine.remedies.rereads import rereads
+from flowplan.engine.remedies.result import Case, Effect, Kind, Remedy
 from flowplan.engine.residual import Row
 from flowplan.engine.results import Entry, Verdict
 from flowplan.engine.sources import FloatArray

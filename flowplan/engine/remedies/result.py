@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 from typing import Literal
 
-from flowplan.engine.remedies_changes import Change
+from flowplan.engine.remedies.changes import Change
 from flowplan.engine.results import Entry, Verdict
 from flowplan.model.flow import Flow
 

@@ -1,13 +1,13 @@
 """What to do about each pair that does not pass: every single change that helps, the best first.
 
-Every figure is the engine's for the flow with that one change made; see `remedies_changes.apply`.
+Every figure is the engine's for the flow with that one change made; see `changes.apply`.
 """
 
 from collections.abc import Callable, Iterable
 
 from flowplan.engine.analysis import Engine
-from flowplan.engine.remedies_result import Remedies
-from flowplan.engine.remedies_work import Workshop
+from flowplan.engine.remedies.result import Remedies
+from flowplan.engine.remedies.work import Workshop
 from flowplan.errors import Diagnostic, UsageError, nearest
 from flowplan.model.flow import Flow
 from flowplan.model.landing import Landing

@@ -10,10 +10,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from flowplan.engine.margin import verdict_of
-from flowplan.engine.remedies_changes import Reread
-from flowplan.engine.remedies_options import plain
-from flowplan.engine.remedies_reread import Moved, RereadSpace
-from flowplan.engine.remedies_result import Effect, Kind, Remedy
+from flowplan.engine.remedies.changes import Reread
+from flowplan.engine.remedies.options import plain
+from flowplan.engine.remedies.reread import Moved, RereadSpace
+from flowplan.engine.remedies.result import Effect, Kind, Remedy
 from flowplan.engine.residual import Row
 from flowplan.engine.sources import FloatArray, IntArray
 from flowplan.model.base import AXES, Axis

@@ -6,7 +6,7 @@ from itertools import combinations
 import numpy as np
 
 from flowplan.engine.graph import AlignmentGraph
-from flowplan.engine.remedies_reread import Options, shares
+from flowplan.engine.remedies.reread import Options, shares
 from flowplan.engine.residual import Row
 from flowplan.engine.sources import FloatArray
 from flowplan.model.base import AXES, WAFER, Axis

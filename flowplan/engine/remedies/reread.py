@@ -11,7 +11,6 @@ import numpy as np
 
 from flowplan.engine.board import Board
 from flowplan.engine.margin import select
-from flowplan.engine.matrix import narrowed
 from flowplan.engine.parts import CHUNK, Kernel
 from flowplan.engine.placement import Amounts, Placement, assemble, walked
 from flowplan.engine.residual import Residuals
@@ -93,7 +92,7 @@ class RereadSpace:
                 + inherited[at[part]][None, :, None] * some[:, None, used]
                 for at in (first, second)
             )
-            kernel = narrowed(self._kernel[axis], used)
+            kernel = self._kernel[axis].narrowed(used)
             found.append(self.board.worst_margins(_replaced(base, used, a, b), kernel).reshape(-1, len(part)))
         return Moved(self.board.places[axis][part], np.concatenate(found))
 

@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from flowplan.engine.board import Board
-from flowplan.engine.levers_ramp import Ramp, Varying
+from flowplan.engine.levers.ramp import Ramp, Varying
 from flowplan.engine.margin import needs
 from flowplan.engine.parts import Kernel, quadratic
 from flowplan.engine.placement import Placement, place
