@@ -4,6 +4,7 @@ import math
 
 import pytest
 
+from flowplan.engine.analysis import Result
 from flowplan.report.records import entry_record, finite, in_unit, margins_document, point_record
 from tests.support.flows import bare_flow, entry, margins_of, mask, overlay_pair
 
@@ -59,9 +60,9 @@ def test_a_source_with_a_shape_keeps_its_own_unit():
     assert record["point"] == point_record(found.point)
 
 
-def test_a_document_of_some_entries_counts_those():
+def test_a_result_of_some_entries_counts_those():
     whole = result(t=2)
-    document = margins_document(whole, whole.entries[:1])
+    document = margins_document(Result(whole.engine, whole.entries[:1]))
     assert document["counts"] == {"pass": 1, "tight": 0, "fail": 0, "unjudged": 0}
     assert len(document["margins"]) == 1
     assert (document["revision"], document["variant"]) == (None, None)
