@@ -26,12 +26,15 @@ class Sample:
         The command line.
     status : int
         The exit status.
+    data : str
+        Content of ``d.csv``.
     """
 
     told: str
     text: str | bytes = FLOW
     command: tuple[str, ...] = ("check", "f.yaml")
     status: int = 2
+    data: str = ""
 
 
 def line(number: int, text: str) -> str:
@@ -45,6 +48,17 @@ def term(text: str) -> str:
     """Return the flow with a term on its tool."""
     return line(2, f"tools: {{s: {{alignment: 30, wafer_alignment: 900, terms: {{t: {text}}}}}}}")
 
+
+def marks(text: str) -> str:
+    """Return the flow with an alignment by marks on its tool."""
+    return line(
+        2,
+        "wafer: {diameter: 150 mm}\nfield: {x: 15 mm, y: 15 mm}\n"
+        f"tools: {{s: {{alignment: {{{text}}}, wafer_alignment: 900}}}}",
+    )
+
+
+HEADINGS = "mask,reference,lot,wafer,field_x,field_y,site_x,site_y,dx,dy\n"
 
 SAMPLES: dict[str, Sample] = {
     "FP101": Sample("none.yaml:1:1: no such file", command=("check", "none.yaml")),
@@ -107,6 +121,18 @@ SAMPLES: dict[str, Sample] = {
         "f.yaml:2:70: random: a skew is one number for both axes",
         term("{random: {x: 1 urad, y: 2 urad}, shape: skew}"),
     ),
+    "FP406": Sample(
+        "f.yaml:4:61: a mark lies off the usable wafer",
+        marks("per_mark: 30, model: shift, sites: [{x: 90 mm, y: 0}]"),
+    ),
+    "FP407": Sample(
+        "f.yaml:4:60: 1 mark cannot fix rotation",
+        marks("per_mark: 30, model: rigid, sites: [{x: 60 mm, y: 0}]"),
+    ),
+    "FP408": Sample(
+        "f.yaml:4:43: a bound of each mark says nothing about how the marks differ",
+        marks("per_mark: {bound: 3}, model: shift, sites: [{x: 60 mm, y: 0}]"),
+    ),
     "FP501": Sample(
         "flowplan: cannot write 'none/f.html': No such file or directory",
         command=("report", "f.yaml", "-o", "none/f.html"),
@@ -122,5 +148,19 @@ SAMPLES: dict[str, Sample] = {
     "FP604": Sample("flowplan: no mask has a choice of references", command=("propose", "f.yaml")),
     "FP605": Sample(
         "flowplan: the flow has no variant 'other'", command=("margins", "f.yaml", "--variant", "other")
+    ),
+    "FP701": Sample(
+        "none.csv:1:1: cannot read the data: No such file or directory",
+        command=("measured", "f.yaml", "none.csv"),
+    ),
+    "FP702": Sample(
+        "d.csv:1:1: no column mask",
+        command=("measured", "f.yaml", "d.csv"),
+        data=HEADINGS.replace("mask", "layer"),
+    ),
+    "FP703": Sample(
+        "d.csv:1:1: the file has no row that can be read",
+        command=("measured", "f.yaml", "d.csv"),
+        data=HEADINGS,
     ),
 }

@@ -22,6 +22,7 @@ def test_a_sample_is_told_with_its_code_and_status(code, tmp_path, monkeypatch):
     monkeypatch.chdir(tmp_path)
     raw = sample.text.encode() if isinstance(sample.text, str) else sample.text
     Path("f.yaml").write_bytes(raw)
+    Path("d.csv").write_text(sample.data, encoding="utf-8")
     result = CliRunner().invoke(app, list(sample.command))
     assert result.stderr.splitlines()[0] == f"{sample.told} [{code}]"
     assert result.exit_code == sample.status

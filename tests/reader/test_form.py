@@ -212,11 +212,11 @@ hint: add `y: …`
 
 2: tools: {s: {alignment: {x: 30, y: 40, z: 5}}}
 FP201 2:25 unknown key 'x'
-hint: known here: random, uniform, bound, offset
+hint: known here: random, uniform, bound, offset, varies, per_mark, sites, model, over
 FP201 2:32 unknown key 'y'
-hint: known here: random, uniform, bound, offset
+hint: known here: random, uniform, bound, offset, varies, per_mark, sites, model, over
 FP201 2:39 unknown key 'z'
-hint: known here: random, uniform, bound, offset
+hint: known here: random, uniform, bound, offset, varies, per_mark, sites, model, over
 
 2: tools: {s: {alignment: {}}}
 FP202 2:24 no size is given
@@ -334,7 +334,7 @@ hint: write `{rule: …}`, or the keys below, indented
 
 6: pairs: [{between: [A, B]}]
 FP202 6:9 the pair has no rule
-hint: give one of enclosure, extension, spacing, overlap, overlay
+hint: give one of enclosure, extension, spacing, overlap, overlay, landing
 
 6: pairs: [{rule: overlays, between: [A, B]}]
 FP204 6:16 unknown rule 'overlays'
