@@ -18,6 +18,9 @@ from flowplan.model.flow import Flow
 
 __all__ = ["GOALS", "Goal", "Ladder", "Progress", "Proposal", "ReferenceChange", "ladder", "propose"]
 
+#: Share of a ladder's time for the unrestricted best; the other steps share the rest.
+_FIRST_SHARE = 0.5
+
 
 def propose(
     flow: Flow,
@@ -115,11 +118,11 @@ def ladder(
     choices = choices_of(flow, free=free, free_all=free_all, pin=pin, same_reference=same_reference)
     problem = _problem(flow, choices, goal)
     clock = Clock.start(goal, time_limit, progress, stop)
-    last = problem.solve(clock)
+    last = problem.solve(clock.part(_FIRST_SHARE))
     most = int(problem.block.changed(last.plan[None]).sum())
     steps, start = [], None
     for limit in range(most):
-        found = problem.solve(clock, limit, start)
+        found = problem.solve(clock.part(1 / (most - limit)), limit, start)
         steps.append(_proposal(flow, problem, goal, limit, found, began))
         start, began = found.plan, time.monotonic()
     steps.append(_proposal(flow, problem, goal, None, last, began))

@@ -127,6 +127,18 @@ class Search:
         """Return the nodes that are not settled."""
         return [*reversed(self._stack), *self.aside]
 
+    def narrowed(self, allowed: BoolArray, weight: FloatArray) -> list[Node]:
+        """Judge a plan of each node and return the nodes that are left, the most promising first."""
+        nodes: list[Node] = []
+        for i in range(0, len(allowed), _AT_ONCE):
+            some = slice(i, i + _AT_ONCE)
+            found = narrow(self.block, allowed[some], self.best, self.rules)
+            nodes += nodes_of(found, weight[some])
+            if found.alive.any():
+                self._take(found.options[found.alive])
+        nodes = self._still_wanted(nodes) if nodes else []
+        return sorted(nodes, key=lambda node: tuple(node.bound.tolist()), reverse=True)
+
     def shave(self, allowed: BoolArray) -> Narrowed:
         """Try every option of every variable alone and drop those with which nothing is wanted.
 

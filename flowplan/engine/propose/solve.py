@@ -6,8 +6,9 @@ once, whichever axes change.
 """
 
 import math
+import time
 from dataclasses import dataclass
-from itertools import pairwise
+from itertools import combinations, pairwise
 
 import numpy as np
 
@@ -17,12 +18,13 @@ from flowplan.engine.propose.clock import Clock
 from flowplan.engine.propose.levels import Solver
 from flowplan.engine.propose.prune import Best, Rules, narrow
 from flowplan.engine.propose.score import Scale
+from flowplan.engine.propose.search import Search
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 from flowplan.model.base import AXES, Axis
 from flowplan.model.candidates import Choice
 
-#: Seconds of the first turn of each axis; every round takes twice as long.
-_FIRST_TURN = 4.0
+#: Most sets of masks that are searched one by one when only so many masks may change.
+_MOST_SETS = 2000
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,8 +88,12 @@ class Problem:
         """
         plan = np.zeros(len(self.choices), dtype=np.int64) if start is None else start
         best = Best.of(self.block, plan)
-        if limit is not None or not self.apart:
-            return self._together(clock, best, limit, self.block.everything)
+        free = self.block.free
+        if limit is not None and limit < len(free):
+            best = self._extended(best, limit)
+            return self._together(clock, best, limit, self._sets(free, limit))
+        if not self.apart:
+            return self._together(clock, best, None, self.block.everything[None])
         solvers = [self._on_axis(clock, axis, plan) for axis in self.judged]
         self._take_turns(clock, solvers)
         for axis, solver in zip(self.judged, solvers, strict=True):
@@ -104,7 +110,7 @@ class Problem:
         rows = np.cumsum([0, *(len(axis.rows.room) for axis in self.judged)])
         parts = tuple(slice(a, b) for a, b in pairwise(rows))
         reached = tuple((part, s.best.score) for part, s in zip(parts, solvers, strict=True))
-        found = self._together(clock, best, None, root, reached)
+        found = self._together(clock, best, None, root[None], reached)
         nodes = found.nodes + sum(s.nodes for s in solvers)
         return Solution(found.plan, found.score, found.proved, found.bound, nodes, found.closed)
 
@@ -113,7 +119,7 @@ class Problem:
         block = Block((axis,), choices, self.scale)
         start = Best.of(block, plan[self.block.variables[axis.axis]])
         solver = Solver(block, start, Rules(None, "none"), clock)
-        solver.start(block.everything)
+        solver.start(block.everything[None])
         return solver
 
     def _take_turns(self, clock: Clock, solvers: list[Solver]) -> None:
@@ -127,13 +133,40 @@ class Problem:
         for solver in solvers:
             solver.tell = tell
         tell()
-        turn = _FIRST_TURN
-        while any(solver.frontier for solver in solvers) and not clock.stopped:
-            for solver in solvers:
-                clock.slice(turn)
-                solver.run()
-            turn *= 2
-        clock.slice(math.inf)
+        spent = [0.0 for _ in solvers]
+        while any(solver.frontier for solver in solvers) and clock():
+            turn = min((k for k, solver in enumerate(solvers) if solver.frontier), key=lambda k: spent[k])
+            began = time.monotonic()
+            solvers[turn].step()
+            spent[turn] += time.monotonic() - began
+
+    def _sets(self, free: IntArray, limit: int) -> BoolArray:
+        """Return what is left when just these masks may change, for every set of the most that may.
+
+        With all other masks decided, bounds are close. Where there are too many sets, all plans are
+        one node.
+        """
+        if math.comb(len(free), limit) > _MOST_SETS:
+            return self.block.everything[None]
+        return np.stack([self._opened(np.zeros_like(self.block.count), s) for s in combinations(free, limit)])
+
+    def _opened(self, plan: IntArray, masks: tuple[int, ...]) -> BoolArray:
+        """Return all plans that differ from a plan in these masks alone, as a node."""
+        opened = np.isin(self.block.mask, masks)[:, None]
+        taken = np.arange(self.block.width) == plan[:, None]
+        return np.where(opened, self.block.everything, taken)
+
+    def _extended(self, best: Best, limit: int) -> Best:
+        """Change one more mask at a time, each time the one that helps most, as far as that goes."""
+        rules = Rules(None, "none")
+        while best.changes < limit:
+            nodes = np.stack([self._opened(best.plan, (int(mask),)) for mask in self.block.free])
+            search = Search(self.block, best, rules, lambda _: True, np.zeros(len(best.plan)))
+            search.narrowed(nodes, np.ones(len(nodes)))
+            if not search.found:
+                break
+            best = search.best
+        return best
 
     def _figure(self, score: FloatArray) -> float:
         return -float(score[0]) if self.scale.goal == "fails" else float(score[0])
@@ -151,7 +184,7 @@ class Problem:
         clock: Clock,
         best: Best,
         limit: int | None,
-        root: BoolArray,
+        roots: BoolArray,
         parts: tuple[tuple[slice, FloatArray], ...] = (),
     ) -> Solution:
         solver = Solver(self.block, best, Rules(limit, "break", parts), clock)
@@ -160,7 +193,7 @@ class Problem:
             clock.best, clock.bound = self._figure(solver.best.score), self._figure(solver.bound)
             clock.closed = solver.closed
 
-        solver.start(root)
+        solver.start(roots)
         solver.tell = tell
         tell()
         proved = solver.run()
