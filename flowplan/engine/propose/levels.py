@@ -177,7 +177,8 @@ class Solver:
         if search.found and len(self.frontier) > _FEW and self.rules.limit is None and self.clock():
             # What was found prunes one node that holds all that is left better than the many.
             allowed, weight = _stacked(self.frontier)
-            whole = narrow(self.block, allowed.any(axis=0)[None], self.best, self.rules)
+            hull = np.asarray(allowed.any(axis=0))[None]
+            whole = narrow(self.block, hull, self.best, self.rules)
             self.frontier = nodes_of(whole, weight.sum(keepdims=True))
 
 
