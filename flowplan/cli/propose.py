@@ -28,6 +28,9 @@ from flowplan.report.proposal import (
 )
 from flowplan.report.textfigures import Figures, percent
 
+#: Processes that search at once: one for each axis.
+_WORKERS = 2
+
 
 @dataclass(frozen=True, slots=True)
 class Wish:
@@ -89,6 +92,7 @@ def _asked(wish: Wish, flow: Flow) -> dict[str, Any]:
         "pin": _ids(wish.pin, flow),
         "same_reference": wish.same_reference,
         "time_limit": wish.time_limit,
+        "workers": _WORKERS,
     }
 
 

@@ -18,6 +18,9 @@ from flowplan.model.flow import Flow
 
 __all__ = ["GOALS", "Goal", "Ladder", "Progress", "Proposal", "ReferenceChange", "ladder", "propose"]
 
+#: Share of a ladder's time for the unrestricted best; the other steps share the rest.
+_FIRST_SHARE = 0.5
+
 
 def propose(
     flow: Flow,
@@ -31,6 +34,7 @@ def propose(
     time_limit: float | None = None,
     progress: Watcher | None = None,
     stop: Stopper | None = None,
+    workers: int = 1,
 ) -> Proposal:
     """Return the best assignment of alignment references.
 
@@ -58,6 +62,9 @@ def propose(
         Told how far the search has come.
     stop : callable, optional
         Asked often; True ends the search like the time limit.
+    workers : int
+        From 2 on, a long search takes one axis to a second process of this interpreter, where the axes can
+        be searched apart. What is found is the same.
 
     Returns
     -------
@@ -71,9 +78,9 @@ def propose(
         (FP602), a mask is both freed and pinned (FP603), or no mask has a choice (FP604).
     """
     began = time.monotonic()
-    _check(goal, changes, time_limit)
+    _check(goal, changes, time_limit, workers)
     choices = choices_of(flow, free=free, free_all=free_all, pin=pin, same_reference=same_reference)
-    problem = _problem(flow, choices, goal)
+    problem = _problem(flow, choices, goal, workers)
     clock = Clock.start(goal, time_limit, progress, stop)
     found = problem.solve(clock, changes)
     return _proposal(flow, problem, goal, changes, found, began)
@@ -90,12 +97,13 @@ def ladder(
     time_limit: float | None = None,
     progress: Watcher | None = None,
     stop: Stopper | None = None,
+    workers: int = 1,
 ) -> Ladder:
     """Return the best plans for 0, 1, 2, ... changed masks, up to the unrestricted best.
 
     Parameters
     ----------
-    flow, goal, free, free_all, pin, same_reference, progress, stop
+    flow, goal, free, free_all, pin, same_reference, progress, stop, workers
         As for `propose`.
     time_limit : float, optional
         Seconds for the whole ladder.
@@ -111,15 +119,15 @@ def ladder(
         As for `propose`.
     """
     began = time.monotonic()
-    _check(goal, None, time_limit)
+    _check(goal, None, time_limit, workers)
     choices = choices_of(flow, free=free, free_all=free_all, pin=pin, same_reference=same_reference)
-    problem = _problem(flow, choices, goal)
+    problem = _problem(flow, choices, goal, workers)
     clock = Clock.start(goal, time_limit, progress, stop)
-    last = problem.solve(clock)
+    last = problem.solve(clock.part(_FIRST_SHARE))
     most = int(problem.block.changed(last.plan[None]).sum())
     steps, start = [], None
     for limit in range(most):
-        found = problem.solve(clock, limit, start)
+        found = problem.solve(clock.part(1 / (most - limit)), limit, start)
         steps.append(_proposal(flow, problem, goal, limit, found, began))
         start, began = found.plan, time.monotonic()
     steps.append(_proposal(flow, problem, goal, None, last, began))
@@ -128,7 +136,7 @@ def ladder(
     return Ladder(tuple(steps), fewest, certain and goal != "yield")
 
 
-def _check(goal: str, changes: int | None, time_limit: float | None) -> None:
+def _check(goal: str, changes: int | None, time_limit: float | None, workers: int) -> None:
     problems = []
     if goal not in GOALS:
         problems.append(Diagnostic("FP602", f"unknown goal {goal!r}", nearest(goal, GOALS)))
@@ -136,17 +144,19 @@ def _check(goal: str, changes: int | None, time_limit: float | None) -> None:
         problems.append(Diagnostic("FP602", f"{changes} masks cannot change", "give 0 or more"))
     if time_limit is not None and not time_limit > 0:
         problems.append(Diagnostic("FP602", f"a time limit of {time_limit:g} s", "give more than 0"))
+    if workers < 1:
+        problems.append(Diagnostic("FP602", f"{workers} processes cannot search", "give 1 or more"))
     if problems:
         raise UsageError(problems)
 
 
-def _problem(flow: Flow, choices: tuple[Choice, ...], goal: Goal) -> Problem:
+def _problem(flow: Flow, choices: tuple[Choice, ...], goal: Goal, workers: int = 1) -> Problem:
     atoms = atoms_of(flow, choices)
     largest = max((float(axis.rows.scale.max(initial=0.0)) for axis in atoms.values()), default=0.0)
     if not any(len(axis.rows.room) for axis in atoms.values()):
         hint = "add pairs with a drawn dimension or a limit"
         raise UsageError([Diagnostic("FP602", "no pair is judged, so no plan is better than another", hint)])
-    return Problem(atoms, choices, Scale.of(goal, largest))
+    return Problem(atoms, choices, Scale.of(goal, largest), workers)
 
 
 def _proposal(

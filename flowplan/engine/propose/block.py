@@ -60,6 +60,12 @@ class Block:
         allowed[~self._counts(), 1:] = False
         return allowed
 
+    @property
+    def free(self) -> IntArray:
+        """Masks that have a choice on which some pair rests, in process order."""
+        several = self.everything.sum(axis=1) > 1
+        return np.unique(self.mask[several])
+
     def _counts(self) -> BoolArray:
         """Return which variables some pair can rest on, shape (n_variables,)."""
         found = np.zeros(len(self.choices), dtype=bool)

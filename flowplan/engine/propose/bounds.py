@@ -23,6 +23,8 @@ from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 
 #: Sites at which margins are bounded; a few are enough, the exact values see all.
 _SITES = 4
+#: Share of options left up to which only these are judged, picked out one by one.
+_DENSE = 0.4
 
 
 @dataclass(slots=True)
@@ -116,17 +118,27 @@ class AxisBounds:
         """
         tables, sizes, low, high = self._walk(allowed)
         masks = self._push_down(tables, allowed, sizes, low, high)
-        sizes = sizes + (self.pattern.sizes[self.late] + self.pattern.sizes[self.early])[:, None]
-        same = self.late == self.early
-        sizes[:, same] = 0.0
-        own = (self.pattern.signed[self.late] - self.pattern.signed[self.early])[:, None]
-        low, high = low + own, high + own
-        low[:, same] = high[:, same] = 0.0
-        back = self.axis.rows.first > self.axis.rows.second
-        low[:, back], high[:, back] = -high[:, back], -low[:, back]
-        found = self._judge(sizes, low, high)
         ok = allowed[np.arange(len(allowed))[:, None], masks]
-        return np.where(ok, found, -np.inf), masks
+        if ok.mean() > _DENSE:
+            row = np.arange(len(self.late))[:, None]
+            return np.where(ok, self._placed(row, sizes, low, high), -np.inf), masks
+        node, row, option = np.nonzero(ok)
+        signed = option if self.is_signed else 0
+        found = np.full(ok.shape, -np.inf)
+        found[ok] = self._placed(
+            row, sizes[node, row, option], low[node, row, signed], high[node, row, signed]
+        )
+        return found, masks
+
+    def _placed(self, row: IntArray, sizes: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+        """Add the patterns to the overlays of some pairs and return what the pairs get."""
+        late, early = self.late[row], self.early[row]
+        differ = (late != early)[..., None]
+        sizes = np.where(differ, sizes + self.pattern.sizes[late] + self.pattern.sizes[early], 0.0)
+        own = self.pattern.signed[late] - self.pattern.signed[early]
+        least, most = np.where(differ, low + own, 0.0), np.where(differ, high + own, 0.0)
+        back = (self.axis.rows.first > self.axis.rows.second)[row][..., None]
+        return self._judge(row, sizes, np.where(back, -most, least), np.where(back, -least, most))
 
     def _push_down(
         self, t: _Tables, allowed: BoolArray, sizes: FloatArray, low: FloatArray, high: FloatArray
@@ -173,17 +185,18 @@ class AxisBounds:
             if i and self.averaged[i]:
                 self._average(t, least, barred, i, count, sizes)
             elif i:
-                one = self.axis.reads.masks[i, :count, 0]
-                least_frame = (t.to_frame[:, one, :i] + cost[:, i, :count]).min(axis=1)
+                left = np.flatnonzero(allowed[:, i].any(axis=0))
+                one = self.axis.reads.masks[i, left, 0]
+                least_frame = (t.to_frame[:, one, :i] + cost[:, i, left]).min(axis=1)
                 t.to_frame[:, i, :i] = least_frame + self.marks.sizes[i] if self.is_marked else least_frame
                 t.to_frame[:, :i, i] = least_frame
                 if self.is_marked:
-                    least_marks = (t.to_marks[:, one, :i] + cost[:, i, :count]).min(axis=1)
+                    least_marks = (t.to_marks[:, one, :i] + cost[:, i, left]).min(axis=1)
                     t.to_frame[:, :i, i] = least_marks
                     t.to_marks[:, i, :i] = t.to_marks[:, :i, i] = least_marks + self.marks.sizes[i]
             if i and self.is_signed:
                 ok = allowed[:, i, :count, None, None]
-                self._signed(t, ok, i, count, self.of_mask[i], low, high)
+                self._signed(t, ok, i, self.of_mask[i], low, high)
             if self.is_marked:
                 t.to_frame[:, i, i] = self.marks.sizes[i]
             if self.is_signed:
@@ -241,21 +254,25 @@ class AxisBounds:
         t: _Tables,
         ok: BoolArray,
         i: int,
-        count: int,
         rows: IntArray,
         low: FloatArray,
         high: FloatArray,
     ) -> None:
         """Carry the ranges of offsets and shared sources on to mask i."""
-        masks, weights = self.axis.reads.masks[i, :count], self.axis.reads.weights[i, :count]
-        own = (self.layer.signed[i] + self.reads.signed[i, :count])[:, None]
+        left = np.flatnonzero(ok.any(axis=(0, 2, 3)))
+        ok, masks, weights = ok[:, left], self.axis.reads.masks[i, left], self.axis.reads.weights[i, left]
+        own = (self.layer.signed[i] + self.reads.signed[i, left])[:, None]
         ends = []
         for frame, marks in ((t.low_frame, t.low_marks), (t.high_frame, t.high_marks)):
-            ends.append(np.einsum("ok,bokeq->boeq", weights, frame[:, masks, :i]) + own)
-            ends.append(np.einsum("ok,bokeq->boeq", weights, marks[:, masks, :i]) + own)
+            if self.averaged[i]:
+                ends.append(np.einsum("ok,bokeq->boeq", weights, frame[:, masks, :i]) + own)
+                ends.append(np.einsum("ok,bokeq->boeq", weights, marks[:, masks, :i]) + own)
+            else:
+                ends += [frame[:, masks[:, 0], :i] + own, marks[:, masks[:, 0], :i] + own]
         low_frame, low_marks, high_frame, high_marks = ends
-        low[:, rows, :count] = low_frame[:, :, self.early[rows]].swapaxes(1, 2)
-        high[:, rows, :count] = high_frame[:, :, self.early[rows]].swapaxes(1, 2)
+        at, early = (slice(None), rows[:, None], left), self.early[rows]
+        low[at] = low_frame[:, :, early].swapaxes(1, 2)
+        high[at] = high_frame[:, :, early].swapaxes(1, 2)
         mark = self.marks.signed[i]
         t.low_frame[:, i, :i] = np.where(ok, low_frame, np.inf).min(axis=1) + mark
         t.high_frame[:, i, :i] = np.where(ok, high_frame, -np.inf).max(axis=1) + mark
@@ -265,28 +282,28 @@ class AxisBounds:
         t.low_marks[:, i, :i], t.high_marks[:, i, :i] = lowest + mark, highest + mark
         t.low_marks[:, :i, i], t.high_marks[:, :i, i] = -highest - mark, -lowest - mark
 
-    def _judge(self, sizes: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
-        """Turn least sizes and ranges into upper bounds of what a pair gets."""
+    def _judge(self, row: IntArray, sizes: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+        """Turn least sizes and ranges of some pairs into upper bounds of what they get."""
         axis, n_sites = self.axis, len(self.sites)
         full = np.zeros((*sizes.shape[:-1], n_sites, 3))
         full[..., self.kinds] = sizes.reshape(*sizes.shape[:-1], n_sites, -1)
-        full += axis.rows.edges[:, None, None]
+        full += axis.rows.edges[row][..., None, :]
         low = low.reshape(*low.shape[:-1], n_sites, -1)
         high = high.reshape(*high.shape[:-1], n_sites, -1)
         nearest = np.maximum(0.0, np.maximum(low, -high))
         full += axis.shared_sizes(nearest[..., 1:])
         offset_low, offset_high = low[..., 0], high[..., 0]
-        room, scale = axis.rows.room[:, None, None], axis.rows.scale[:, None, None]
+        room, scale = axis.rows.room[row][..., None], axis.rows.scale[row][..., None]
         if self.as_yield:
-            return self._chances(full, offset_low, offset_high)
+            return self._chances(row, full, offset_low, offset_high)
         need = axis.need(full)
         offset = np.maximum(0.0, np.maximum(offset_low, -offset_high))
         return np.asarray(settled(room - offset - need, scale + offset + need).min(axis=-1))
 
-    def _chances(self, full: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+    def _chances(self, row: IntArray, full: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
         """Return the best chances at any site; short of room, spread can bring failure down to a half."""
         sigma, bound = np.sqrt(full[..., VARIANCE]), full[..., BOUND]
-        room, scale = self.axis.rows.room[:, None, None], self.axis.rows.scale[:, None, None]
+        room, scale = self.axis.rows.room[row][..., None], self.axis.rows.scale[row][..., None]
         failure = np.zeros_like(sigma)
         for offset in (high, -low):
             left = settled(room + offset - bound, scale + np.abs(offset) + bound)

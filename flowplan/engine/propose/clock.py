@@ -1,6 +1,5 @@
 """When to stop, and how far the search has come."""
 
-import math
 import time
 from dataclasses import dataclass, field
 
@@ -26,7 +25,7 @@ class Clock:
     best, bound, closed, nodes
         As in `Progress`.
     stopped : bool
-        Whether the search is over, not only this slice of it.
+        Whether the search is over.
     """
 
     goal: Goal
@@ -38,7 +37,6 @@ class Clock:
     closed: float = 0.0
     nodes: int = 0
     stopped: bool = False
-    pause: float = math.inf
     _last: float = field(default_factory=time.monotonic)
 
     @classmethod
@@ -57,8 +55,12 @@ class Clock:
             self.watcher(Progress(self.goal, self.best, self.bound, self.closed, self.nodes))
         if (self.deadline is not None and now >= self.deadline) or (self.stopper and self.stopper()):
             self.stopped = True
-        return not self.stopped and now < self.pause
+        return not self.stopped
 
-    def slice(self, seconds: float) -> None:
-        """Say stop after some seconds, until a new slice is given."""
-        self.pause = time.monotonic() + seconds
+    def part(self, share: float) -> "Clock":
+        """Return a clock for a share of the time that is left; without a limit there is no end to it."""
+        deadline = self.deadline
+        if deadline is not None:
+            now = time.monotonic()
+            deadline = now + share * max(0.0, deadline - now)
+        return Clock(self.goal, deadline, self.watcher, self.stopper)

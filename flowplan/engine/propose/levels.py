@@ -61,26 +61,36 @@ class Solver:
     frontier: list[Node] = field(default_factory=list)
     tell: Callable[[], None] = lambda: None
     _failures: FloatArray = field(default_factory=lambda: np.zeros(0))
+    _level: int | None = None
+    _most: int = 0
 
-    def start(self, root: BoolArray) -> None:
-        """Begin with all plans of a node, shape (n_variables, n_options)."""
-        self._failures = np.zeros(len(root))
-        self.frontier = nodes_of(narrow(self.block, root[None], self.best, self.rules), np.ones(1))
+    def start(self, roots: BoolArray) -> None:
+        """Begin with all plans of some nodes, shape (n_nodes, n_variables, n_options)."""
+        self._failures = np.zeros(roots.shape[1])
+        nodes = np.repeat(1 / len(roots), len(roots))
+        search = self._search(self.best, np.inf)
+        self.frontier = search.narrowed(roots, nodes)
+        self.best = search.best
 
     def run(self) -> bool:
         """Search what is left until the clock says stop; return whether the best is proved."""
         while self.frontier and self.clock():
+            self.step()
+        return not self.frontier
+
+    def step(self) -> None:
+        """Search for a while: a part of the tree, sized by nodes."""
+        if not self._most:
             if len(self.frontier) <= _FEW:
                 self._shave()
             if self.frontier:
                 level = min(self._gap(node.bound) for node in self.frontier)
-                if level < len(self.best.score):
-                    self._aim(level)
-                    self._settle(level)
-                else:
-                    self._settle(None)
-            self.tell()
-        return not self.frontier
+                self._level, self._most = (level if level < len(self.best.score) else None), _LONG
+                if self._level is not None:
+                    self._aim(self._level)
+        if self.frontier:
+            self._settle()
+        self.tell()
 
     @property
     def bound(self) -> FloatArray:
@@ -140,14 +150,14 @@ class Solver:
         target = np.full(len(self.best.score), -np.inf)
         target[:level], target[level] = self.best.score[:level], aim
         goal = Best(self.best.plan, target, self.best.changes)
-        roots = self.frontier
-        if len(roots) <= _FEW:
-            search = self._search(goal, np.inf)
-            roots = [
-                n for node in roots for n in nodes_of(search.shave(node.allowed), np.array([node.weight]))
-            ]
-            if search.found:
-                return False, search.best
+        search = self._search(goal, np.inf)
+        if len(self.frontier) <= _FEW:
+            shaved = (nodes_of(search.shave(n.allowed), np.array([n.weight])) for n in self.frontier)
+            roots = [node for nodes in shaved for node in nodes]
+        else:
+            roots = search.narrowed(*_stacked(self.frontier))
+        if search.found:
+            return False, search.best
         for most in _SHORT:
             search = self._search(goal, most)
             ended = search.run(roots, first=True)
@@ -155,16 +165,22 @@ class Solver:
                 break
         return ended, search.best if search.found else None
 
-    def _settle(self, level: int | None) -> None:
-        """Search until all that is left can only be better in a figure after this one."""
-        most = _LONG
-        while True:
-            search = self._search(self.best, most)
-            ended = search.run(self.frontier, level=level)
-            if ended or search.found or not self.clock():
-                break
-            most *= 2
-        left = search.left()
-        if search.found and len(self.frontier) <= _FEW < len(left):
-            left = self.frontier  # what was found prunes these better than the many left
-        self.best, self.frontier = search.best, left
+    def _settle(self) -> None:
+        """Search until all that is left can only be better in a figure after this one, or for a while."""
+        search = self._search(self.best, self._most)
+        ended = search.run(self.frontier, level=self._level)
+        if not (ended or search.found) and self.clock():
+            self._most *= 2
+            return
+        self._most = 0
+        self.best, self.frontier = search.best, search.left()
+        if search.found and len(self.frontier) > _FEW and self.rules.limit is None and self.clock():
+            # What was found prunes one node that holds all that is left better than the many.
+            allowed, weight = _stacked(self.frontier)
+            hull = np.asarray(allowed.any(axis=0))[None]
+            whole = narrow(self.block, hull, self.best, self.rules)
+            self.frontier = nodes_of(whole, weight.sum(keepdims=True))
+
+
+def _stacked(nodes: list[Node]) -> tuple[BoolArray, FloatArray]:
+    return np.stack([node.allowed for node in nodes]), np.array([node.weight for node in nodes])

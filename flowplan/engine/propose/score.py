@@ -109,7 +109,7 @@ class Groups:
         self.values[node, ordered, :, place] = values[node, order]
 
     def best(self, allowed: BoolArray) -> BoolArray:
-        """Return which options of every variable none is better than, shape (n_nodes, n_variables, n_options).
+        """Return the best options, shape (n_nodes, n_variables, n_options); several on a tie.
 
         Parameters
         ----------

@@ -127,6 +127,27 @@ class Search:
         """Return the nodes that are not settled."""
         return [*reversed(self._stack), *self.aside]
 
+    def narrowed(self, allowed: BoolArray, weight: FloatArray) -> list[Node]:
+        """Judge a plan of each node and return the nodes that are left, the most promising first.
+
+        When it is time to stop, what was not looked at is left as one node.
+        """
+        nodes: list[Node] = []
+        for i in range(0, len(allowed), _AT_ONCE):
+            some, share = allowed[i : i + _AT_ONCE], weight[i : i + _AT_ONCE]
+            stop = i > 0 and not self.watch(self)
+            if stop:
+                some, share = np.asarray(allowed[i:].any(axis=0))[None], weight[i:].sum(keepdims=True)
+            found = narrow(self.block, some, self.best, self.rules)
+            nodes += nodes_of(found, share)
+            self.nodes += len(some)
+            if found.alive.any():
+                self._take(found.options[found.alive])
+            if stop:
+                break
+        nodes = self._still_wanted(nodes) if nodes else []
+        return sorted(nodes, key=lambda node: tuple(node.bound.tolist()), reverse=True)
+
     def shave(self, allowed: BoolArray) -> Narrowed:
         """Try every option of every variable alone and drop those with which nothing is wanted.
 
