@@ -58,9 +58,7 @@ def drawn_areas(data: Data, entry: LandingEntry, n: int, seed: int) -> np.ndarra
     place, point = engine.placement, entry.point
     random = np.random.default_rng(seed)
     kinds = {"random": 1 / engine.flow.sigma, "uniform": 3**-0.5, "offset": 0.0, "bound": 0.0}
-    scalars = [
-        random.standard_normal(n) * kinds[s.kind] + (s.kind == "offset") for s in place.sources
-    ]
+    scalars = [random.standard_normal(n) * kinds[s.kind] + (s.kind == "offset") for s in place.sources]
     X, Y, x, y = (0, 0, 0, 0) if point is None else (point.X, point.Y, point.x, point.y)
     at = (1, x, y, X + x, Y + y)
     area = np.ones(n)
