@@ -150,13 +150,14 @@ CSV_COLUMNS = (
     "offset", "bound", "random", "overlay_offset", "overlay_bound", "overlay_random",
     "need_mixed", "need_rss", "need_linear", "margin_mixed", "margin_rss", "margin_linear",
     "verdict", "cpk", "fail_ppm", "point_X", "point_Y", "point_x", "point_y", "chain_rss",
-    "landing_nominal_area", "landing_mean_area", "landing_p_below_least", "landing_p_open",
 )  # fmt: skip
+_LANDING_KEYS = ("nominal_area", "mean_area", "p_below_least", "p_open")
 
 
 def _csv(result: Result) -> None:
     text = io.StringIO()
-    writer = csv.DictWriter(text, CSV_COLUMNS, lineterminator="\n")
+    more = [f"landing_{key}" for key in _LANDING_KEYS] if result.landings else []
+    writer = csv.DictWriter(text, [*CSV_COLUMNS, *more], lineterminator="\n")
     writer.writeheader()
     for entry in result.checks:
         row = _csv_row(entry, result.flow.unit)
@@ -169,10 +170,11 @@ def _csv_row(entry: Entry | LandingEntry, unit: str) -> dict[str, Any]:
     row = {key: record[key] for key in CSV_COLUMNS if key in record}
     row |= {"first": entry.layers[0], "second": entry.layers[1], "unit": unit}
     row["chain"] = " > ".join(record["chain"] or ())
-    row |= _flat("landing", record.get("landing"), ("nominal_area", "mean_area", "p_below_least", "p_open"))
     row |= _flat("overlay", record["overlay"], ("offset", "bound", "random"))
     row |= _flat("need", record["need"], BASES)
     row |= _flat("margin", record["margin"], BASES)
+    if isinstance(entry, LandingEntry):
+        row |= _flat("landing", record["landing"], _LANDING_KEYS)
     return row | _flat("point", record["point"], ("X", "Y", "x", "y"))
 
 

@@ -6,7 +6,7 @@ from flowplan.cli.options import CompareForm
 from flowplan.cli.progress import Bar
 from flowplan.cli.session import read_flow
 from flowplan.cli.streams import emit, emit_json, folded, printable
-from flowplan.cli.tables import Column, markdown_lines, show_note, show_table
+from flowplan.cli.tables import Column, markdown_lines, show_left_out, show_note, show_table
 from flowplan.engine.analysis import analyse
 from flowplan.engine.simulate import Options, Simulation
 from flowplan.engine.simulate import simulate as work
@@ -54,6 +54,7 @@ def _show(found: Simulation, text: SimulationText) -> None:
     emit("")
     for line in text.legend:
         show_note(line)
+    show_left_out(found.flow)
 
 
 def _markdown(found: Simulation, text: SimulationText) -> None:

@@ -81,7 +81,7 @@ def test_every_size_of_a_tool_says_where_it_comes_from(name):
 @pytest.mark.parametrize(
     ("name", "masks", "pairs"),
     [
-        ("cmos", range(12, 16), range(15, 26)),
+        ("cmos", range(12, 16), range(15, 27)),
         ("ebeam_transistor", range(10, 20), range(15, 26)),
         ("logic_backend", range(45, 60), range(60, 121)),
         ("photonic", range(10, 25), range(15, 40)),
@@ -104,7 +104,7 @@ def test_examples_use_every_rule_kind_and_shape(loaded):
     flows = [one.flow for one in loaded.values()]
     terms = [t for flow in flows for t in terms_of(flow)]
     assert {p.rule for flow in flows for p in flow.pairs} == {
-        "enclosure", "extension", "spacing", "overlap", "overlay",
+        "enclosure", "extension", "spacing", "overlap", "overlay", "landing",
     }  # fmt: skip
     assert {kind for t in terms for kind, _ in t.parts()} == set(KINDS)
     assert {t.shape for t in terms} == set(SHAPE_DIMENSION)

@@ -20,6 +20,8 @@ _SAME = 1e-7
 #: Secants that differ by more than this factor lie beside a jump.
 _CLIFF = 1e4
 _MOST_STEPS = 64
+#: Probabilities and shares below this are not told from 0, and no figure has more decimals than these.
+_LEAST, _DIGITS = 1e-9, 10
 #: The distribution rises by this much only where it jumps.
 _JUMP = 1e-6
 
@@ -131,7 +133,7 @@ class LandedArea:
         share : float
             Share of the drawn area, above 0.
         """
-        return self._less(share * self.drawn * (1 - _SAME))
+        return _settled(self._less(share * self.drawn * (1 - _SAME)))
 
     def _less(self, area: float) -> float:
         x, y = self._tables
@@ -151,12 +153,13 @@ class LandedArea:
     def open(self) -> float:
         """Return the probability that nothing lands."""
         x, y = self._tables
-        return float(np.clip(1 - self._weight @ (x.above[:, 0] * y.above[:, 0]), 0.0, 1.0))
+        return _settled(float(np.clip(1 - self._weight @ (x.above[:, 0] * y.above[:, 0]), 0.0, 1.0)))
 
     def mean(self) -> float:
         """Return the mean share."""
         x, y = self._tables
-        return float(self._weight @ (x.mean() * y.mean())) / self.drawn
+        found = float(self._weight @ (x.mean() * y.mean())) / self.drawn
+        return _settled(found)
 
     def quantile(self, probability: float) -> float:
         """Return the share below which the landed area lies with a probability; 0 where it is an open."""
@@ -175,7 +178,13 @@ class LandedArea:
                 low, below = tried, value
             else:
                 high, above = tried, value
-        return high if above - below > _JUMP else low + (high - low) * below / (below - above)
+        found = high if above - below > _JUMP else low + (high - low) * below / (below - above)
+        return _settled(found)
+
+
+def _settled(value: float) -> float:
+    """Return a figure to the digits that integration knows; what is less than that is 0."""
+    return round(value, _DIGITS) if value > _LEAST else 0.0
 
 
 def _common(share: float) -> tuple[FloatArray, FloatArray]:
@@ -185,6 +194,6 @@ def _common(share: float) -> tuple[FloatArray, FloatArray]:
     if share < 0.7:
         z, weight = np.polynomial.hermite_e.hermegauss(8 if share < 0.1 else 16 if share < 0.4 else 32)
         return z, weight / math.sqrt(2 * math.pi)
-    intervals = min(30, math.ceil(6 / math.sqrt(max(1 - share, 1e-6))))
+    intervals = min(30, math.ceil(4 / math.sqrt(max(1 - share, 1e-6))))
     z, weight = panels(np.linspace(-REACH, REACH, intervals + 1), 5)
     return z, weight * density(z)

@@ -23,7 +23,7 @@ from flowplan.model.landing import Landing, Rectangle
 _RADII = (3.0, 1.5, 6.0)
 _DIRECTIONS = 16
 #: Of the sites ranked worst, so many are worked out exactly.
-_CANDIDATES = 4
+_CANDIDATES = 3
 #: Shares of sites closer than this are equally bad; the first counts.
 _TIE = 1e-9
 _PER_MILLION = 1e6

@@ -80,7 +80,7 @@ class Interval:
             (2 * self.pad, 2 * math.sqrt(self.var_pad)),
             (self.contact + self.pad - abs(self.mean), math.hypot(math.sqrt(self.var_sum), self.sigma)),
         )
-        reach = np.linspace(-REACH, REACH, 120)
+        reach = np.linspace(-REACH, REACH, 200)
         near = [centre + reach * max(sigma, 2 * self.least) for centre, sigma in centres]
         found = np.unique(np.concatenate(near))
         found = found[found > self.least]
