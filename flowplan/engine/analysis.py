@@ -161,7 +161,7 @@ class Result:
         if not self.landings:
             return self.entries
         place = {pair.name: i for i, pair in enumerate(self.flow.pairs)}
-        every = (*self.entries, *self.landings)
+        every: tuple[Entry | LandingEntry, ...] = (*self.entries, *self.landings)
         return tuple(sorted(every, key=lambda e: place.get(e.pair.name, len(place))))
 
     @property
