@@ -23,7 +23,9 @@ _MOST_STEPS = 64
 #: Probabilities and shares below this are not told from 0, and no figure has more decimals than these.
 _LEAST, _DIGITS = 1e-9, 10
 #: The distribution rises by this much only where it jumps.
-_JUMP = 1e-6
+_JUMP = 1e-3
+#: Elsewhere a bracket this narrow is finished by a straight line.
+_NARROW = 1e-5
 
 
 @dataclass(frozen=True, slots=True)
@@ -168,7 +170,7 @@ class LandedArea:
         low, high = 0.0, float(self._tables[0].lengths[-1] * self._tables[1].lengths[-1]) / self.drawn
         below, above = self.open() - probability, 1 - probability
         for i in range(_MOST_STEPS):
-            if high - low <= STEEP * high:
+            if high - low <= (STEEP if above - below > _JUMP else _NARROW) * high:
                 break
             # every other step halves, so that a jump of the distribution holds nothing up
             part = 0.5 if i % 2 else min(0.99, max(0.01, below / (below - above)))

@@ -24,6 +24,8 @@ _RADII = (3.0, 1.5, 6.0)
 _DIRECTIONS = 16
 #: Of the sites ranked worst, so many are worked out exactly.
 _CANDIDATES = 3
+#: ... as far as the area left there is within this of the worst.
+_CLOSE = 0.01
 #: Shares of sites closer than this are equally bad; the first counts.
 _TIE = 1e-9
 _PER_MILLION = 1e6
@@ -131,6 +133,8 @@ class _Case:
         found: dict[bytes, int] = {}
         alike = self._alike()
         for site in order[: 1 if not self._moments.shaped else len(order)]:
+            if keys[0][site] > keys[0][order[0]] + _CLOSE:
+                break
             found.setdefault(alike[site].tobytes(), int(site))
             if len(found) == _CANDIDATES:
                 break
