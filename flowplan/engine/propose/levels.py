@@ -15,7 +15,7 @@ import numpy as np
 from flowplan.engine.propose.block import Block
 from flowplan.engine.propose.climb import climb
 from flowplan.engine.propose.clock import Clock
-from flowplan.engine.propose.prune import Best, Rules, narrow
+from flowplan.engine.propose.prune import Best, Rules
 from flowplan.engine.propose.search import Node, Search, nodes_of
 from flowplan.engine.sources import BoolArray, FloatArray
 
@@ -63,6 +63,7 @@ class Solver:
     _failures: FloatArray = field(default_factory=lambda: np.zeros(0))
     _level: int | None = None
     _most: int = 0
+    _better: bool = False
 
     def start(self, roots: BoolArray) -> None:
         """Begin with all plans of some nodes, shape (n_nodes, n_variables, n_options)."""
@@ -81,10 +82,12 @@ class Solver:
     def step(self) -> None:
         """Search for a while: a part of the tree, sized by nodes."""
         if not self._most:
-            if len(self.frontier) <= _FEW:
+            if len(self.frontier) > _FEW:
+                self._gather()
+            else:
                 self._shave()
             if self.frontier:
-                level = min(self._gap(node.bound) for node in self.frontier)
+                level = self._lowest(self.frontier)
                 self._level, self._most = (level if level < len(self.best.score) else None), _LONG
                 if self._level is not None:
                     self._aim(self._level)
@@ -123,6 +126,24 @@ class Solver:
             self.best = search.best
             left += nodes_of(found, np.array([node.weight]))
         self.frontier = left
+
+    def _gather(self) -> None:
+        """Put all that is left into one node, where shaving makes up for what that gives away.
+
+        It does where no figure is open again that was settled. What was found meanwhile prunes one node
+        better than many. Sets of masks that may change stay apart.
+        """
+        if self.rules.limit is not None:
+            return
+        allowed, weight = _stacked(self.frontier)
+        search = self._search(self.best, np.inf)
+        whole = nodes_of(search.shave(np.asarray(allowed.any(axis=0))), weight.sum(keepdims=True))
+        self.best = search.best
+        if self._better or not whole or self._lowest(whole) >= self._lowest(self.frontier):
+            self.frontier = whole
+
+    def _lowest(self, nodes: list[Node]) -> int:
+        return min(self._gap(node.bound) for node in nodes)
 
     def _gap(self, bound: FloatArray) -> int:
         apart = self.block.scale.apart(bound, self.best.score)
@@ -174,12 +195,7 @@ class Solver:
             return
         self._most = 0
         self.best, self.frontier = search.best, search.left()
-        if search.found and len(self.frontier) > _FEW and self.rules.limit is None and self.clock():
-            # What was found prunes one node that holds all that is left better than the many.
-            allowed, weight = _stacked(self.frontier)
-            hull = np.asarray(allowed.any(axis=0))[None]
-            whole = narrow(self.block, hull, self.best, self.rules)
-            self.frontier = nodes_of(whole, weight.sum(keepdims=True))
+        self._better = search.found
 
 
 def _stacked(nodes: list[Node]) -> tuple[BoolArray, FloatArray]:
