@@ -81,7 +81,7 @@ def test_every_size_of_a_tool_says_where_it_comes_from(name):
 @pytest.mark.parametrize(
     ("name", "masks", "pairs"),
     [
-        ("cmos", range(12, 16), range(15, 27)),
+        ("cmos", range(12, 16), range(15, 26)),
         ("ebeam_transistor", range(10, 20), range(15, 26)),
         ("logic_backend", range(45, 60), range(60, 121)),
         ("photonic", range(10, 25), range(15, 40)),
