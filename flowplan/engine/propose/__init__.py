@@ -2,6 +2,7 @@
 
 import time
 from collections.abc import Iterable
+from dataclasses import replace
 
 import numpy as np
 
@@ -130,10 +131,22 @@ def ladder(
         found = problem.solve(clock.part(1 / (most - limit)), limit, start)
         steps.append(_proposal(flow, problem, goal, limit, found, began))
         start, began = found.plan, time.monotonic()
-    steps.append(_proposal(flow, problem, goal, None, last, began))
+    final = _proposal(flow, problem, goal, None, last, began)
+    if steps and not final.proved and _rank(steps[-1]) > _rank(final):
+        # Cut short, the unrestricted search can be behind a step that was looked for after it.
+        final = replace(steps[-1], limit=None, proved=False, bound=final.bound)
+    steps.append(final)
     fewest = next((i for i, step in enumerate(steps) if not step.counts_after["fail"]), None)
     certain = fewest is None or all(step.proved for step in steps[: fewest + 1])
     return Ladder(tuple(steps), fewest, certain and goal != "yield")
+
+
+def _rank(proposal: Proposal) -> list[float]:
+    """Return figures by which one plan is better than another for its goal, the first that differs."""
+    result = proposal.after
+    margins = sorted(result.margin(e) for e in result.entries if e.margin is not None)
+    reached = {"worst": [], "fails": [-proposal.best], "yield": [proposal.best]}
+    return [*reached[proposal.goal], *margins]
 
 
 def _check(goal: str, changes: int | None, time_limit: float | None, workers: int) -> None:
