@@ -6,7 +6,7 @@ import time
 
 import pytest
 
-from flowplan.engine.propose import helper, propose, solve
+from flowplan.engine.propose import propose, solve, worker
 from flowplan.errors import UsageError
 from tests.propose.flows import large_flow
 from tests.propose.test_known import chain
@@ -28,7 +28,7 @@ def at_once(monkeypatch):
             started.append(self)
 
     monkeypatch.setattr(solve, "_WORTH", 0.0)
-    monkeypatch.setattr(helper.subprocess, "Popen", Watched)
+    monkeypatch.setattr(worker.subprocess, "Popen", Watched)
     return started
 
 
@@ -47,7 +47,7 @@ def test_where_no_process_can_be_had_one_finds_it(flow, at_once, monkeypatch, pr
     alone = propose(flow)
     with monkeypatch.context() as patch:
         if program == "false":
-            patch.setattr(helper, "_PROGRAM", "raise SystemExit(3)")
+            patch.setattr(worker, "_PROGRAM", "raise SystemExit(3)")
         else:
             patch.setattr(sys, "executable", program)
         found = propose(flow, workers=2)

@@ -15,11 +15,11 @@ import numpy as np
 from flowplan.engine.propose.atoms import AxisAtoms
 from flowplan.engine.propose.block import Block
 from flowplan.engine.propose.clock import Clock
-from flowplan.engine.propose.helper import Helper, Report
 from flowplan.engine.propose.levels import Solver
 from flowplan.engine.propose.prune import Best, Rules, narrow
 from flowplan.engine.propose.score import Scale
 from flowplan.engine.propose.search import Search
+from flowplan.engine.propose.worker import Report, Worker
 from flowplan.engine.sources import BoolArray, FloatArray, IntArray
 from flowplan.model.base import AXES, Axis
 from flowplan.model.candidates import Choice
@@ -156,22 +156,22 @@ class Problem:
         """Search the first axis here and the second in another process; update the reports in place."""
         mine, other = solvers
         try:
-            helper = Helper(other)
+            worker = Worker(other)
         except OSError:
             return
 
         def tell() -> None:
-            reports[:] = [Report.of(mine), helper.report]
+            reports[:] = [Report.of(mine), worker.report]
             self._tell(clock, reports)
 
         mine.tell = tell
         try:
             mine.run()
-            while helper.running and clock():
+            while worker.running and clock():
                 time.sleep(_NAP)
                 tell()
         finally:
-            helper.end()
+            worker.end()
         tell()
 
     def _tell(self, clock: Clock, reports: list[Report]) -> None:

@@ -23,7 +23,7 @@ from flowplan.engine.sources import FloatArray
 
 #: Seconds for the second process to end once it is told to.
 _PATIENCE = 10.0
-_PROGRAM = "from flowplan.engine.propose.helper import serve; serve()"
+_PROGRAM = "from flowplan.engine.propose.worker import serve; serve()"
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,7 +42,7 @@ class Report:
         return cls(solver.best, solver.bound, solver.closed, solver.nodes, not solver.frontier)
 
 
-class Helper:
+class Worker:
     """A search that goes on in a second process.
 
     Parameters
