@@ -38,7 +38,7 @@ def draw(dot: str, fmt: Format) -> bytes:
     if not sys.executable:  # an interpreter inside another program cannot start a second one
         return picture(text, fmt)
     command = [sys.executable, "-P", __file__, fmt]
-    done = subprocess.run(command, input=text, capture_output=True, check=False)  # noqa: S603
+    done = subprocess.run(command, input=text, capture_output=True, check=False)  # noqa: S603 - our own words
     if done.returncode:
         raise RuntimeError(done.stderr.decode(errors="replace").strip())
     return done.stdout

@@ -40,7 +40,7 @@ def clip(page: Page, name: str, top: str, bottom: str, *, width: int, height: in
     y = max(0.0, first["y"] - 1)
     tall = min(height, last["y"] + last["height"] + 1 - y)
     box = {"x": 0, "y": y, "width": width, "height": tall}
-    page.screenshot(path=TARGET / name, clip=box, full_page=True)  # type: ignore[arg-type]
+    page.screenshot(path=TARGET / name, clip=box, full_page=True)
 
 
 def report_pictures(browser: Browser, folder: Path) -> None:

@@ -2,10 +2,12 @@
 
 import math
 import re
+from collections.abc import Callable
 
 import pytest
 from playwright.sync_api import Page
 
+from flowplan.engine.results import Entry
 from tests.browser.watching import Open
 from tests.support.examples import example
 
@@ -92,7 +94,7 @@ def test_rows_stay_whole_when_sorted(show: Open) -> None:
     assert sorted(rows.all_text_contents()) == before
     worst = example("cmos").worst
     assert worst is not None
-    assert worst.pair.name in rows.first.text_content()  # type: ignore[operator]
+    assert worst.pair.name in rows.first.text_content()
 
 
 def test_masks_sort_too(show: Open) -> None:
@@ -109,8 +111,8 @@ def test_filters_narrow_together_and_the_count_is_said(show: Open) -> None:
     status = page.get_by_role("status")
     assert status.text_content() == f"All {len(entries)} checks shown"
 
-    def shown(keep: object) -> None:
-        wanted = [e for e in entries if keep(e)]  # type: ignore[operator]
+    def shown(keep: Callable[[Entry], bool]) -> None:
+        wanted = [e for e in entries if keep(e)]
         assert 0 < len(wanted) < len(entries)
         assert column(page, 0) == [e.pair.name for e in wanted]
         assert status.text_content() == f"{len(wanted)} of {len(entries)} checks shown"
